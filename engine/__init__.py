@@ -1,0 +1,29 @@
+"""What an L1-type penalty can find in a wide screening study, computed.
+
+Rooms, from the ground up (each imports only rooms above it in this list):
+
+- quantities: every user-facing quantity, declared once
+- normal: the normal law and the moments of soft thresholding
+- arguments: the boundary where arrays are checked
+- limits: whatever the signal: transition, lasso, two-level, sorted L1, witnesses
+- files: strict JSON
+- study, shortlist: what the user plans, what the user keeps; their files
+- schemas: the JSON Schemas of both files
+
+The engine needs numpy and scipy only. It opens no folder and shows nothing.
+"""
+
+from engine.limits.lasso import lasso_boundary
+from engine.limits.sorted_l1 import sorted_l1_boundary
+from engine.limits.transition import critical_sparsity, power_limit
+from engine.limits.two_level import two_level_boundary
+from engine.limits.two_level_closed_form import two_level_closed_form
+
+__all__ = [
+    "critical_sparsity",
+    "lasso_boundary",
+    "power_limit",
+    "sorted_l1_boundary",
+    "two_level_boundary",
+    "two_level_closed_form",
+]

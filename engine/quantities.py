@@ -1,0 +1,207 @@
+"""Each user-facing quantity, declared once.
+
+The command's options, the checks of files and arguments, the JSON Schema, the sliders and the
+help texts are all made from the declarations at the end of this file.
+"""
+
+import math
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+__all__ = [
+    "ACTIVES",
+    "CANDIDATES",
+    "EFFECT_SCALE",
+    "EFFECT_SIZE",
+    "FDP",
+    "NOISE_SD",
+    "QUANTITIES",
+    "RUNS",
+    "SAMPLING_RATIO",
+    "SHARE",
+    "SPARSITY",
+    "TPP",
+    "Quantity",
+    "shown",
+]
+
+
+@dataclass(frozen=True)
+class Quantity:
+    """A number the user can give or read, with its interval and its meaning.
+
+    Attributes
+    ----------
+    name : str
+        Name in Python, in files and (with dashes) on the command line.
+    label, symbol, unit, meaning : str
+        Words on the screen; `symbol` and `unit` may be empty.
+    low, high : float
+        Ends of the admitted interval; infinite where there is none.
+    low_open, high_open : bool
+        Whether the end itself is excluded.
+    whole : bool
+        Whether only whole numbers are admitted.
+    nonzero : bool
+        Whether 0 is excluded inside the interval.
+    slider : tuple of float
+        The stretch (low, high) that a slider explores; fields admit the whole interval.
+    """
+
+    name: str
+    label: str
+    symbol: str
+    unit: str
+    meaning: str
+    low: float
+    high: float
+    low_open: bool = False
+    high_open: bool = False
+    whole: bool = False
+    nonzero: bool = False
+    slider: tuple[float, float] = (0.0, 1.0)
+
+    @property
+    def option(self) -> str:
+        """Name of the command-line option."""
+        return "--" + self.name.replace("_", "-")
+
+    @property
+    def rule(self) -> str:
+        """The admitted values in words, to follow 'must be'."""
+        kind = "a whole number" if self.whole else "a finite number"
+        if self.nonzero:
+            kind = kind.replace(" number", " nonzero number")
+        ends = []
+        if math.isfinite(self.low):
+            ends.append(f"{'above' if self.low_open else 'at least'} {shown(self.low)}")
+        if math.isfinite(self.high):
+            ends.append(f"{'below' if self.high_open else 'at most'} {shown(self.high)}")
+        return " ".join([kind, " and ".join(ends)]).strip()
+
+    def admits(self, values: npt.NDArray[np.float64]) -> npt.NDArray[np.bool_]:
+        """Whether each of `values` (finite or not) obeys the rule."""
+        above = values > self.low if self.low_open else values >= self.low
+        below = values < self.high if self.high_open else values <= self.high
+        admitted = above & below & np.isfinite(values)
+        if self.whole:
+            admitted &= values == np.floor(values)
+        if self.nonzero:
+            admitted &= values != 0.0
+        return admitted
+
+    def check(self, value: Any, where: str = "") -> float:
+        """Return `value` as a float (an int when whole), or say what is wrong with it.
+
+        Raises
+        ------
+        ValueError
+            Names the quantity (or `where` it stood), the rule and the value received.
+        """
+        number = isinstance(value, int | float | np.integer | np.floating)
+        if number and not isinstance(value, bool | np.bool_):
+            try:
+                as_float = float(value)
+            except OverflowError:  # a Python int beyond every float
+                as_float = math.inf
+            if self.admits(np.asarray(as_float)):
+                return int(as_float) if self.whole else as_float
+        raise ValueError(f"{where or self.name} must be {self.rule}, not {shown(value)}")
+
+    def schema(self) -> dict[str, Any]:
+        """JSON Schema (draft 2020-12) of one value."""
+        schema: dict[str, Any] = {
+            "type": "integer" if self.whole else "number",
+            "description": f"{self.meaning} ({self.unit})" if self.unit else self.meaning,
+        }
+        if math.isfinite(self.low):
+            schema["exclusiveMinimum" if self.low_open else "minimum"] = _plain(self.low)
+        if math.isfinite(self.high):
+            schema["exclusiveMaximum" if self.high_open else "maximum"] = _plain(self.high)
+        if self.nonzero:
+            schema["not"] = {"const": 0}
+        return schema
+
+
+def shown(value: Any) -> str:
+    """Return `value` as an error message shows it: short, and on one line."""
+    if isinstance(value, np.generic):
+        value = value.item()
+    if isinstance(value, float) and value.is_integer() and abs(value) < 1e15:
+        value = int(value)
+    text = repr(value)
+    return text if len(text) <= 60 else text[:57] + "..."
+
+
+def _plain(end: float) -> float | int:
+    return int(end) if end.is_integer() else end
+
+
+_MOST = 1e9  # counts beyond this are typing errors
+
+RUNS = Quantity(
+    "runs", "Runs", "n", "count",
+    "Experimental runs, the rows of the design",
+    1, _MOST, whole=True, slider=(10, 20_000),
+)  # fmt: skip
+CANDIDATES = Quantity(
+    "candidates", "Candidates", "p", "count",
+    "Candidate predictors, the columns of the design",
+    1, _MOST, whole=True, slider=(100, 20_000),
+)  # fmt: skip
+ACTIVES = Quantity(
+    "actives", "Actives", "k", "count",
+    "Candidates believed to have an effect; fewer than the candidates",
+    1, _MOST, whole=True, slider=(1, 10_000),
+)  # fmt: skip
+SAMPLING_RATIO = Quantity(
+    "sampling_ratio", "Sampling ratio", "δ", "runs per candidate",
+    "Runs divided by candidates",
+    0.0, math.inf, low_open=True, slider=(0.01, 20.0),
+)  # fmt: skip
+SPARSITY = Quantity(
+    "sparsity", "Sparsity", "ε", "actives per candidate",
+    "Actives divided by candidates",
+    0.0, 1.0, low_open=True, high_open=True, slider=(0.0005, 0.98),
+)  # fmt: skip
+TPP = Quantity(
+    "tpp", "TPP", "", "share of the actives",
+    "True positive proportion (power): the share of the actives that is found",
+    0.0, 1.0, low_open=True, slider=(0.01, 1.0),
+)  # fmt: skip
+FDP = Quantity(
+    "fdp", "FDP", "", "share of the list",
+    "False discovery proportion: the false share of the list",
+    0.0, 1.0, low_open=True, high_open=True, slider=(0.01, 0.99),
+)  # fmt: skip
+NOISE_SD = Quantity(
+    "noise_sd", "Noise SD", "σ", "unit of the response",
+    "Standard deviation of the noise in one run",
+    0.0, math.inf, low_open=True, slider=(0.1, 10.0),
+)  # fmt: skip
+EFFECT_SIZE = Quantity(
+    "size", "Effect size", "b", "unit of the response per column SD",
+    "Coefficient of one active per standard deviation of its column; the sign does not matter",
+    -math.inf, math.inf, nonzero=True, slider=(0.01, 2.0),
+)  # fmt: skip
+EFFECT_SCALE = Quantity(
+    "scale", "Effect scale", "s", "unit of the response per column SD",
+    "Scale of a spread of effects: SD of a normal law, mean size of an exponential one",
+    0.0, math.inf, low_open=True, slider=(0.01, 2.0),
+)  # fmt: skip
+SHARE = Quantity(
+    "share", "Share", "w", "share of the actives",
+    "Share of the actives that has this effect; the shares sum to 1",
+    0.0, 1.0, low_open=True, slider=(0.01, 1.0),
+)  # fmt: skip
+
+QUANTITIES = {
+    quantity.name: quantity
+    for quantity in (
+        RUNS, CANDIDATES, ACTIVES, SAMPLING_RATIO, SPARSITY, TPP, FDP,
+        NOISE_SD, EFFECT_SIZE, EFFECT_SCALE, SHARE,
+    )
+}  # fmt: skip
