@@ -26,7 +26,8 @@ def check_arrays(*pairs: tuple[Quantity, Any]) -> tuple[Array, ...]:
         return tuple(np.broadcast_arrays(*arrays))
     except ValueError:
         shapes = ", ".join(
-            f"{quantity.name} {array.shape}" for (quantity, _), array in zip(pairs, arrays, strict=True)
+            f"{quantity.name} {array.shape}"
+            for (quantity, _), array in zip(pairs, arrays, strict=True)
         )
         raise ValueError(f"arguments must have shapes that broadcast, not {shapes}") from None
 

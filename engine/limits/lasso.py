@@ -66,7 +66,9 @@ def lasso_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:
     >>> [round(q, 4) for q in lasso_boundary([0.3, 0.5, 0.6], 0.3, 0.2).tolist()]
     [0.3317, 0.5493, nan]
     """
-    u, delta, eps = check_arrays((TPP, tpp), (SAMPLING_RATIO, sampling_ratio), (SPARSITY, sparsity))
+    u, delta, eps = check_arrays(
+        (TPP, tpp), (SAMPLING_RATIO, sampling_ratio), (SPARSITY, sparsity)
+    )
     eps_star = critical(delta)
     u_star = limit(delta, eps, eps_star)
     beyond = (u >= u_star) & (u_star < 1.0)

@@ -149,9 +149,7 @@ _RATIO_TABLE = _ratio_log_odds(np.exp(_LOG_T))[0]
 _SPARSITY_TABLE = _sparsity_log_odds(np.exp(_LOG_T))[0]
 
 
-def _invert(
-    curve: Callable[[Array], tuple[Array, Array]], table: Array, value: Array
-) -> Array:
+def _invert(curve: Callable[[Array], tuple[Array, Array]], table: Array, value: Array) -> Array:
     """t at which `curve` takes `value`, elementwise."""
     log_t = np.interp(value, table, _LOG_T)
     for _ in range(3):  # the error squares: 1e-4, 1e-8, 1e-16
