@@ -4,8 +4,9 @@ Source: *False discoveries occur early on the lasso path*, Annals of Statistics 
 arXiv 1511.01957 (formula from memory, verified by two independent programs). With t the
 normalised zero threshold of the fit, delta the sampling ratio, eps the sparsity, u the TPP:
 
-    u(t) = [2 eps t phi(t) + P (delta - (1 - eps) null_risk(t))] / (eps [(1 + t^2) P + 2 t phi(t)]),
-    P = P(|Z| <= t),      FDP = 2 (1-eps) Phi(-t) / (2 (1-eps) Phi(-t) + eps u).
+    u(t) = [2 eps t phi(t) + P (delta - (1 - eps) null_risk(t))]
+           / (eps [(1 + t^2) P + 2 t phi(t)]),      P = P(|Z| <= t),
+    FDP = 2 (1-eps) Phi(-t) / (2 (1-eps) Phi(-t) + eps u).
 
 This is the published equation solved for u, which also takes the cancellation out of it. The
 signal that attains it has tiny and huge effects only, and noise tending to 0.
@@ -26,7 +27,7 @@ from engine.limits.transition import (
 from engine.normal import Array, central, density, null_risk, tail
 from engine.quantities import SAMPLING_RATIO, SPARSITY, TPP
 
-__all__ = ["lasso_boundary", "lasso_curve"]
+__all__ = ["lasso_boundary"]
 
 
 def lasso_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:

@@ -11,6 +11,7 @@ The transition is a curve in t > 0, the normalised zero threshold at which it is
 delta falls from 1 to 0 as t grows. From a sampling ratio of 1 on there is no transition.
 """
 
+import math
 from collections.abc import Callable
 from typing import Any
 
@@ -118,6 +119,18 @@ def threshold_at_ratio(delta: Array) -> Array:
 def threshold_at_sparsity(eps: Array) -> Array:
     """Minimax soft threshold: t of least (1 - eps) null_risk(t) + eps (1 + t^2)."""
     return _invert(_sparsity_log_odds, _SPARSITY_TABLE, np.log1p(-eps) - np.log(eps))
+
+
+def near_threshold_at_ratio(delta: float) -> float:
+    """`threshold_at_ratio` of one number to about 1e-4, for drawing."""
+    odds = math.log1p(-delta) - math.log(delta)
+    return math.exp(np.interp(odds, _RATIO_TABLE, _LOG_T))
+
+
+def near_threshold_at_sparsity(eps: float) -> float:
+    """`threshold_at_sparsity` of one number to about 1e-4, for drawing."""
+    odds = math.log1p(-eps) - math.log(eps)
+    return math.exp(np.interp(odds, _SPARSITY_TABLE, _LOG_T))
 
 
 def _sparsity_at(t: Array) -> Array:
