@@ -49,6 +49,10 @@ class Quantity:
         Whether 0 is excluded inside the interval.
     slider : tuple of float
         The stretch (low, high) that a slider explores; fields admit the whole interval.
+    scale : str
+        How the slider spreads that stretch: 'linear', 'log' or 'cube root'.
+    step : float
+        One key press on a linear slider.
     """
 
     name: str
@@ -63,6 +67,8 @@ class Quantity:
     whole: bool = False
     nonzero: bool = False
     slider: tuple[float, float] = (0.0, 1.0)
+    scale: str = "linear"
+    step: float = 0.01
 
     @property
     def option(self) -> str:
@@ -145,27 +151,27 @@ _MOST = 1e9  # counts beyond this are typing errors
 RUNS = Quantity(
     "runs", "Runs", "n", "count",
     "Experimental runs, the rows of the design",
-    1, _MOST, whole=True, slider=(10, 20_000),
+    1, _MOST, whole=True, slider=(10, 20_000), scale="log",
 )  # fmt: skip
 CANDIDATES = Quantity(
     "candidates", "Candidates", "p", "count",
     "Candidate predictors, the columns of the design",
-    1, _MOST, whole=True, slider=(100, 20_000),
+    1, _MOST, whole=True, slider=(100, 20_000), scale="log",
 )  # fmt: skip
 ACTIVES = Quantity(
     "actives", "Actives", "k", "count",
     "Candidates believed to have an effect; fewer than the candidates",
-    1, _MOST, whole=True, slider=(1, 10_000),
+    1, _MOST, whole=True, slider=(1, 10_000), scale="cube root",
 )  # fmt: skip
 SAMPLING_RATIO = Quantity(
     "sampling_ratio", "Sampling ratio", "δ", "runs per candidate",
     "Runs divided by candidates",
-    0.0, math.inf, low_open=True, slider=(0.01, 20.0),
+    0.0, math.inf, low_open=True, slider=(0.01, 20.0), scale="log",
 )  # fmt: skip
 SPARSITY = Quantity(
     "sparsity", "Sparsity", "ε", "actives per candidate",
     "Actives divided by candidates",
-    0.0, 1.0, low_open=True, high_open=True, slider=(0.0005, 0.98),
+    0.0, 1.0, low_open=True, high_open=True, slider=(0.0005, 0.98), scale="cube root",
 )  # fmt: skip
 TPP = Quantity(
     "tpp", "TPP", "", "share of the actives",
@@ -180,17 +186,17 @@ FDP = Quantity(
 NOISE_SD = Quantity(
     "noise_sd", "Noise SD", "σ", "unit of the response",
     "Standard deviation of the noise in one run",
-    0.0, math.inf, low_open=True, slider=(0.1, 10.0),
+    0.0, math.inf, low_open=True, slider=(0.1, 10.0), scale="log",
 )  # fmt: skip
 EFFECT_SIZE = Quantity(
     "size", "Effect size", "b", "unit of the response per column SD",
     "Coefficient of one active per standard deviation of its column; the sign does not matter",
-    -math.inf, math.inf, nonzero=True, slider=(0.01, 2.0),
+    -math.inf, math.inf, nonzero=True, slider=(0.01, 2.0), scale="log",
 )  # fmt: skip
 EFFECT_SCALE = Quantity(
     "scale", "Effect scale", "s", "unit of the response per column SD",
     "Scale of a spread of effects: SD of a normal law, mean size of an exponential one",
-    0.0, math.inf, low_open=True, slider=(0.01, 2.0),
+    0.0, math.inf, low_open=True, slider=(0.01, 2.0), scale="log",
 )  # fmt: skip
 SHARE = Quantity(
     "share", "Share", "w", "share of the actives",
