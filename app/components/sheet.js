@@ -1,0 +1,55 @@
+// HTML written by Python. Whatever carries data-do speaks to Python when it is used: a button
+// when clicked, a field or box when changed; its other data-* attributes go along.
+
+export function render({model, el}) {
+  const root = document.createElement("div")
+  root.className = `sheet ${model.kind}`
+  if (model.live) root.setAttribute("aria-live", "polite")
+  el.appendChild(root)
+
+  const paint = () => {
+    const active = el.getRootNode().activeElement
+    const key = active && root.contains(active) ? active.dataset.key : undefined
+    root.innerHTML = model.html
+    if (key) root.querySelector(`[data-key="${CSS.escape(key)}"]`)?.focus()
+  }
+  const speak = (target, more) => model.send_msg({...target.dataset, ...more})
+
+  root.addEventListener("click", (event) => {
+    const target = event.target.closest("button[data-do], a[data-do]")
+    if (target) speak(target, {})
+  })
+  root.addEventListener("change", (event) => {
+    const target = event.target.closest("input[data-do], textarea[data-do], select[data-do]")
+    if (!target) return
+    if (target.type === "file") return read(target)
+    const box = target.type === "checkbox"
+    speak(target, {value: box ? target.checked : target.value})
+  })
+
+  // A file is measured before it is sent: one too large would close the connection.
+  const read = async (target) => {
+    const file = target.files[0]
+    if (!file) return
+    const limit = Number(target.dataset.limit)
+    const fits = file.size <= limit
+    const text = fits ? await file.text() : ""
+    speak(target, {name: file.name, size: file.size, text})
+    target.value = ""
+  }
+
+  // Python can ask for a file to be saved, or a text to be copied.
+  model.on("msg:custom", (event) => {
+    const order = event.data ?? event
+    if (order.save) {
+      const blob = new Blob([order.text], {type: "application/json"})
+      const link = document.createElement("a")
+      link.href = URL.createObjectURL(blob)
+      link.download = order.save
+      link.click()
+      setTimeout(() => URL.revokeObjectURL(link.href), 10000)
+    }
+  })
+  model.on("html", paint)
+  paint()
+}

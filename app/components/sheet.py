@@ -1,0 +1,40 @@
+"""HTML written by Python, whose buttons and fields speak back."""
+
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import panel as pn
+import param
+
+from app.components.styles import SHARED
+
+__all__ = ["Sheet"]
+
+
+class Sheet(pn.custom.JSComponent):
+    """A piece of the page; see sheet.js.
+
+    `html` is set from `markupsafe.Markup`, so that whatever a user typed is escaped.
+    """
+
+    html = param.String()
+    kind = param.String(doc="CSS class of the piece.")
+    live = param.Boolean(default=False, doc="Whether screen readers announce changes.")
+
+    _esm = Path(__file__).parent / "sheet.js"
+    _stylesheets = [SHARED, (Path(__file__).parent / "sheet.css").read_text()]
+
+    def __init__(
+        self, kind: str, on_use: Callable[[dict[str, Any]], None] | None = None, **params: Any
+    ) -> None:
+        super().__init__(kind=kind, **params)
+        self._on_use = on_use
+
+    def save(self, name: str, text: str) -> None:
+        """Hand the browser a file to save."""
+        self._send_msg({"save": name, "text": text})
+
+    def _handle_msg(self, data: dict[str, Any]) -> None:
+        if self._on_use is not None:
+            self._on_use(data)

@@ -1,0 +1,56 @@
+// What the page does by itself: tabs, the narrow screen's picture switch, the key K, and a word
+// when the connection is lost.
+
+const tabs = [...document.querySelectorAll("[role=tab]")]
+function open_page(tab) {
+  for (const other of tabs) {
+    const chosen = other === tab
+    other.setAttribute("aria-selected", String(chosen))
+    other.tabIndex = chosen ? 0 : -1
+    document.getElementById(other.getAttribute("aria-controls")).hidden = !chosen
+  }
+  window.dispatchEvent(new Event("resize"))
+}
+for (const [i, tab] of tabs.entries()) {
+  tab.addEventListener("click", () => open_page(tab))
+  tab.addEventListener("keydown", (event) => {
+    const step = {ArrowRight: 1, ArrowLeft: -1}[event.key]
+    if (!step) return
+    const next = tabs[(i + step + tabs.length) % tabs.length]
+    open_page(next)
+    next.focus()
+  })
+}
+open_page(tabs[0])
+
+const planes = document.querySelector(".planes")
+planes.dataset.plane = "tradeoff"
+for (const button of document.querySelectorAll(".switch button")) {
+  button.addEventListener("click", () => {
+    planes.dataset.plane = button.dataset.plane
+    for (const other of document.querySelectorAll(".switch button")) {
+      other.setAttribute("aria-pressed", String(other === button))
+    }
+    window.dispatchEvent(new Event("resize"))
+  })
+}
+
+function typing() {
+  let active = document.activeElement
+  while (active?.shadowRoot?.activeElement) active = active.shadowRoot.activeElement
+  return active?.matches("input:not([type=range]):not([type=checkbox]):not([type=radio]), textarea, select")
+}
+function everywhere(selector, root = document) {
+  const found = [...root.querySelectorAll(selector)]
+  for (const element of root.querySelectorAll("*")) {
+    if (element.shadowRoot) found.push(...everywhere(selector, element.shadowRoot))
+  }
+  return found
+}
+document.addEventListener("keydown", (event) => {
+  if (event.ctrlKey || event.metaKey || event.altKey || typing()) return
+  if (event.key === "k" || event.key === "K") everywhere("button[data-do=keep]")[0]?.click()
+})
+
+const lost = document.querySelector(".lost")
+lost.querySelector("button").addEventListener("click", () => location.reload())

@@ -1,0 +1,197 @@
+"""The Reach page: two planes, the names at the curves' ends, the verdict, and keeping."""
+
+from typing import Any
+
+import panel as pn
+from markupsafe import Markup
+
+from app.components.ends import Ends
+from app.components.sheet import Sheet
+from app.plots.phase import PhasePlane
+from app.plots.tradeoff import TradeoffPlane
+from app.reach import Reach
+from app.state import Session
+from app.theme import THEMES
+from app.verdict import Piece, verdict
+from app.words import computed, count, typed
+from engine.limits.families import FAMILIES
+
+__all__ = ["ReachView"]
+
+# Beside the other names of its column, the closed form needs no more.
+_SHORT = {"two-level-closed-form": "closed form"}
+
+
+class ReachView:
+    """Pictures and words of one session's Reach page, built once."""
+
+    def __init__(self, session: Session) -> None:
+        self._session = session
+        self.tradeoff = TradeoffPlane()
+        self.phase = PhasePlane()
+        self.ends = Ends()
+        self.verdict = Sheet("verdict", self._use, live=True)
+        self.keep = Sheet("keep", self._use)
+        watch = session.param.watch
+        watch(self._show_curves, ["curves", "chosen", "shown"])
+        watch(self._show_reach, ["reach", "problem"])
+        watch(self._show_kept, ["points"])
+        watch(self._show_keep, ["reach", "chosen", "curves", "notice", "problem"])
+        watch(self._repaint, ["theme"])
+        self._repaint()
+        self._show_curves()
+        self._show_reach()
+        self._show_kept()
+        self._show_keep()
+
+    def roots(self) -> dict[str, Any]:
+        """Everything the page places, by name."""
+        return {
+            "tradeoff": pn.pane.Bokeh(self.tradeoff.figure, sizing_mode="stretch_both"),
+            "phase": pn.pane.Bokeh(self.phase.figure, sizing_mode="stretch_both"),
+            "ends": self.ends,
+            "verdict": self.verdict,
+            "keep": self.keep,
+        }
+
+    def _use(self, data: dict[str, Any]) -> None:
+        session = self._session
+        match data.get("do"):
+            case "keep":
+                session.keep_point()
+            case "choose":
+                session.choose(str(data.get("penalty")))
+            case "undo":
+                session.undo()
+            case "example":
+                session.open_example()
+
+    def _show_curves(self, *_: Any) -> None:
+        session = self._session
+        if session.curves is not None:
+            self.tradeoff.show_curves(session.curves, session.shown, session.chosen)
+        self._show_ends()
+
+    def _show_reach(self, *_: Any) -> None:
+        session = self._session
+        if session.reach is None:
+            self.tradeoff.clear()
+            self.phase.clear()
+        elif session.problem is None:
+            self.tradeoff.show_reach(session.reach)
+            self.phase.show_reach(session.reach)
+        self.verdict.html = _verdict_html(session)
+        self._show_ends()
+
+    def _show_ends(self) -> None:
+        session = self._session
+        reach, curves = session.reach, session.curves
+        if reach is None or curves is None:
+            self.ends.param.update(heading="", rows=[], counts=[])
+            return
+        self.ends.param.update(
+            heading=f"Lowest FDP\nat TPP {typed(reach.tpp)}",
+            rows=_rows(reach, session.shown),
+            counts=_counts(reach),
+        )
+
+    def _show_kept(self, *_: Any) -> None:
+        self.tradeoff.show_kept([])
+
+    def _show_keep(self, *_: Any) -> None:
+        self.keep.html = _keep_html(self._session)
+
+    def _repaint(self, *_: Any) -> None:
+        theme = THEMES[self._session.theme]
+        self.tradeoff.repaint(theme)
+        self.phase.repaint(theme)
+
+
+def _rows(reach: Reach, shown: tuple[str, ...]) -> list[dict[str, Any]]:
+    """Rows of the curves' names from the highest value down; those without a value last."""
+    rows = [
+        {
+            "key": key,
+            "name": _SHORT.get(key, FAMILIES[key].label),
+            "value": computed(reach.lowest[key]),
+            "end": _end(reach, key),
+        }
+        for key in shown
+    ]
+    # The order FAMILIES are declared in is the order of the curves, lasso apart.
+    rows.sort(key=lambda row: (row["key"] == "lasso", list(FAMILIES).index(row["key"])))
+    return rows
+
+
+def _end(reach: Reach, key: str) -> float | None:
+    """FDP at which the penalty's curve meets TPP 1; None for a lasso that ends before it."""
+    if key == "lasso" and reach.power_limit < 1.0:
+        return None
+    return reach.ends[key]
+
+
+def _counts(reach: Reach) -> list[list[str]]:
+    """The list that the target asks for, in counts."""
+    found = reach.tpp * reach.actives
+    listed = found / (1.0 - reach.fdp)
+    return [
+        ["Such a list, in counts", ""],
+        ["found", f"{count(found)} of {count(reach.actives)}"],
+        ["false", count(listed - found)],
+        ["list", count(listed)],
+    ]
+
+
+def _verdict_html(session: Session) -> Markup:
+    if session.problem is not None:
+        return Markup('<p class="problem">{}</p>').format(session.problem.message)
+    if session.reach is None:
+        return Markup(
+            '<p>Type <span class="target">runs, candidates, actives</span>, or open the example '
+            'study.</p><p><button class="button" data-do="example" data-key="example">'
+            "Open the example</button></p>"
+        )
+    return Markup("<p>{}</p>").format(Markup("").join(map(_piece, verdict(session.reach))))
+
+
+def _piece(piece: Piece) -> Markup:
+    if piece.kind == "words":
+        return Markup("{}").format(piece.text)
+    if piece.kind == "target":
+        return Markup('<span class="target">{}</span>').format(piece.text)
+    return Markup('<span class="family {}">{}</span>').format(piece.kind, piece.text)
+
+
+def _keep_html(session: Session) -> Markup:
+    """The Keep button, the penalty it keeps, and whether the curves are exact."""
+    refusal = ""
+    exact = session.curves is not None and session.curves.exact
+    return Markup(
+        '<button class="button strong" data-do="keep" data-key="keep" {disabled}>'
+        "Keep this point <kbd>K</kbd></button>"
+        '<div class="keep-as">as <span class="segments" role="group" aria-label="Penalty to keep">'
+        "{options}</span></div>{state}"
+    ).format(
+        disabled=Markup('disabled title="{}"').format(refusal) if refusal else "",
+        options=Markup("").join(
+            Markup(
+                '<button data-do="choose" data-penalty="{0}" data-key="as-{0}" '
+                'aria-pressed="{1}">{2}</button>'
+            ).format(key, str(key == session.chosen).lower(), family.label)
+            for key, family in FAMILIES.items()
+            if family.witness is not None
+        ),
+        state=_state_line(session, refusal, exact),
+    )
+
+
+def _state_line(session: Session, refusal: str, exact: bool) -> Markup:
+    if session.notice:
+        return Markup(
+            '<p class="notice">{} <button data-do="undo" data-key="undo">Undo</button></p>'
+        ).format(session.notice)
+    if refusal:
+        return Markup('<p class="notice muted">{}</p>').format(refusal)
+    if exact:
+        return Markup('<p class="state">exact values</p>')
+    return Markup('<p class="state waiting">two curves follow</p>')
