@@ -1,0 +1,120 @@
+r"""The least risk of any sorted-L1 shrinkage, for a law of effects and a zero threshold.
+
+*Derived here* from the lower bound posed in *Characterizing the SLOPE trade-off*, Annals of
+Statistics 51(1), 2023, doi 10.1214/22-AOS2194; tests verify it against a generic quadratic
+program. In units of tau an estimate is pi + Z, with pi = t_j for the share p_j of candidates and pi = 0 for the rest. The shrinkages that a sorted-L1
+penalty can have in the limit are the odd functions eta that are 0 up to the zero threshold
+alpha and rise with a slope in [0, 1] beyond. With x = |pi + Z|,
+
+    w(x) = 2 (1 - sum_j p_j) phi(x) + sum_j p_j [phi(x - t_j) + phi(x + t_j)],
+    m(x) = sum_j p_j t_j [phi(x - t_j) - phi(x + t_j)] / w(x),
+
+and eta(x) = x - A(x), the risk is
+
+    sum_j p_j t_j^2 - int_alpha w m^2 dx + int_alpha w (A - (x - m))^2 dx,
+
+so the best A is the nondecreasing regression of x - m(x) with weights w(x), raised to alpha
+where it is lower. Its slope stays within [0, 1] by itself, because the posterior mean m rises.
+"""
+
+from dataclasses import dataclass, field
+from functools import lru_cache
+
+import numpy as np
+from scipy.optimize import isotonic_regression
+
+from engine.normal import Array
+
+__all__ = ["Shrinkage", "least_risk"]
+
+# Panels of Gauss-Legendre nodes: the integrands are smooth but for the ends of the pooled
+# stretches, where they are once differentiable, so the error falls with the cube of the
+# spacing; halving the panels moves the boundaries by less than 1e-6 in FDP (tested).
+_PANEL = 0.25
+_ORDER = 6
+
+# The density beyond the last node, 9 standard deviations past every atom, is below 1e-18.
+_REACH = 9.0
+
+# Keeps the weights positive far from every atom, where they underflow.
+_FLOOR = 1e-250
+
+_SQRT_2PI = float(np.sqrt(2.0 * np.pi))
+
+
+@dataclass(frozen=True)
+class Shrinkage:
+    """The best shrinkage eta(x) = x - withheld(x) beyond the threshold, on nodes.
+
+    Attributes
+    ----------
+    threshold : float
+        alpha, up to which eta is 0.
+    x, mass, withheld : ndarray, shape (nodes,)
+        Nodes past the threshold, the share of candidates each stands for, and A there.
+    risk : float
+        E (eta(pi + Z) - pi)^2.
+    """
+
+    threshold: float
+    risk: float
+    x: Array = field(repr=False)
+    mass: Array = field(repr=False)
+    withheld: Array = field(repr=False)
+
+
+def least_risk(
+    threshold: float, sizes: tuple[float, ...], masses: tuple[float, ...]
+) -> Shrinkage:
+    """Return the sorted-L1 shrinkage of least risk for a law with finite atoms.
+
+    The arguments are trusted.
+
+    Parameters
+    ----------
+    threshold : float
+        Zero threshold alpha >= 0, in units of tau.
+    sizes, masses : tuple of float
+        Effects t_j > 0 in units of tau, and the share p_j of the candidates at each. The
+        other candidates have no effect; actives that tend to 0 count among them.
+
+    Examples
+    --------
+    >>> from engine.limits.least_risk import least_risk
+    >>> round(least_risk(1.0, (1.4,), (0.2,)).risk, 4)
+    0.2885
+    """
+    offsets, widths = _nodes(max(max(sizes) - threshold, 0.0))
+    x = threshold + offsets
+    w = (2.0 * (1.0 - sum(masses)) / _SQRT_2PI) * np.exp(-0.5 * x * x)
+    first = np.zeros_like(x)  # w m
+    energy = 0.0
+    for t, p in zip(sizes, masses, strict=True):
+        plus = (p / _SQRT_2PI) * np.exp(-0.5 * (x - t) ** 2)
+        minus = plus * np.exp(-2.0 * t * x)
+        w += plus + minus
+        first += t * (plus - minus)
+        energy += p * t * t
+    w += _FLOOR
+    mean = first / w
+    mass = w * widths
+    aim = x - mean
+    withheld = np.maximum(isotonic_regression(aim, weights=mass).x, threshold)
+    excess = withheld - aim
+    risk = energy + float(mass @ (excess * excess - mean * mean))
+    return Shrinkage(threshold, risk, x, mass, withheld)
+
+
+def _nodes(stretch: float) -> tuple[Array, Array]:
+    """Offsets from the threshold and their widths, up to `_REACH` past an atom at `stretch`."""
+    return _panels(int(np.ceil((stretch + _REACH) / _PANEL)))
+
+
+@lru_cache(maxsize=256)
+def _panels(count: int) -> tuple[Array, Array]:
+    node, weight = np.polynomial.legendre.leggauss(_ORDER)
+    middle = _PANEL * (np.arange(count) + 0.5)
+    offsets = (middle[:, None] + 0.5 * _PANEL * node).ravel()
+    widths = np.tile(0.5 * _PANEL * weight, count)
+    offsets.flags.writeable = widths.flags.writeable = False
+    return offsets, widths
