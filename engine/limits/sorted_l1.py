@@ -19,7 +19,9 @@ The tool therefore calls the result a bound with a witness, not a theorem.
 """
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -147,39 +149,50 @@ def _raised_by_single(alpha: float, u: float, delta: float, eps: float) -> float
 # seen to win only below 2.6 times the ratio.
 _SPLIT_RANGE = 4.0
 
-# Sizes tried first, past the common size of the single law.
-_SPLIT_STEPS = (0.4, 1.3, 2.7, 4.7)
+# Sizes tried first, past the common size of the single law; the last one stands for infinity.
+_SPLIT_STEPS = (0.4, 1.3, 2.7, 4.7, 9.0)
 
 
 def _raised_by_split(alpha: float, u: float, delta: float, eps: float) -> tuple[float, float]:
     """Return the largest threshold from `alpha` on that one size and 0 allow, and the size."""
-    if polar_risk(np.asarray(alpha), u, eps) > _SPLIT_RANGE * delta:
+    if polar_risk(np.asarray(alpha), np.asarray(u), np.asarray(eps)) > _SPLIT_RANGE * delta:
         return alpha, 0.0
 
     def excess(a: float, size: float) -> float:
         return least_risk(a, (size,), (eps * _share_found(a, u, size),)).risk - delta
 
-    common = size_of(alpha, u)
-    tried = [common + step for step in _SPLIT_STEPS]
-    values = [excess(alpha, size) for size in tried]
-    k = values.index(min(values))
-    # A size between those tried gains no more than 2 percent; a risk that still falls at the
-    # largest one, and is not below the ratio yet, tends to that of the polar law.
-    last = k == len(tried) - 1
-    if values[k] > (0.0 if last else 0.02 * delta):
-        return alpha, 0.0
-    low = tried[k - 1] if k else common + 1e-3
-    high = tried[k] + 4.0 if last else tried[k + 1]
-    size, value = least_on(lambda t: excess(alpha, t), low, high, 1e-2)
-    while value < -1e-8 * delta:
-        raised = rising_root(lambda a: excess(a, size), alpha, value, 0.01, _ACCURACY)
+    bracket = _split_bracket(partial(excess, alpha), size_of(alpha, u), delta)
+    size = 0.0
+    while bracket is not None:
+        size, value = least_on(partial(excess, alpha), *bracket, accuracy=1e-2)
+        if value > -1e-7 * delta:
+            break
+        raised = rising_root(partial(_swapped, excess, size), alpha, value, 0.01, _ACCURACY)
         if raised - alpha < 10.0 * _ACCURACY:
             return raised, size
-        alpha = raised
-        reach = 0.3 * (high - low)
-        least = max(size - reach, size_of(alpha, u) + 1e-3)
-        size, value = least_on(lambda t: excess(alpha, t), least, size + reach, 1e-2)
+        alpha, reach = raised, 0.3 * (bracket[1] - bracket[0])
+        bracket = (max(size - reach, size_of(alpha, u) + 1e-3), size + reach)
     return alpha, size
+
+
+def _swapped(excess: Callable[[float, float], float], size: float, a: float) -> float:
+    return excess(a, size)
+
+
+def _split_bracket(
+    excess: Callable[[float], float], common: float, delta: float
+) -> tuple[float, float] | None:
+    """Return sizes around the best one tried, or None where no size can help."""
+    tried = [common + step for step in _SPLIT_STEPS]
+    values = [excess(size) for size in tried]
+    k = values.index(min(values))
+    if k == len(tried) - 1:
+        # The risk falls towards that of an infinite size; only below the ratio does it help.
+        return (tried[k - 1], tried[k]) if values[k] < -1e-6 * delta else None
+    # A size between those tried gains no more than 2 percent.
+    if values[k] > 0.02 * delta:
+        return None
+    return tried[k - 1] if k else common + 1e-3, tried[k + 1]
 
 
 def _share_found(alpha: float, u: float, size: float) -> float:
@@ -224,7 +237,7 @@ def polar_threshold(u: Array, delta: Array, eps: Array) -> Array:
     bottom = _least_polar(u, eps)
     has_root = polar_risk(bottom, u, eps) < delta
     top = np.maximum(bottom, np.sqrt(2.0 * delta / (eps * u))) + 2.0
-    root = elementwise.find_root(
+    root: Array = elementwise.find_root(
         lambda b, u, delta, eps: polar_risk(b, u, eps) - delta,
         (np.where(has_root, bottom, 0.0), np.where(has_root, top, 1.0)),
         args=(u, delta, eps),
@@ -233,7 +246,7 @@ def polar_threshold(u: Array, delta: Array, eps: Array) -> Array:
 
 
 def _least_polar(u: Array, eps: Array) -> Array:
-    """Where the polar risk is least, by golden section from the threshold of random picks on."""
+    """Where the polar risk is least, by golden section from the threshold of random picks."""
     ratio = 0.6180339887498949
     low = -ndtri(0.5 * u)
     high = low + 12.0  # nulls are below 1e-32 there: the risk has long been rising
@@ -241,7 +254,8 @@ def _least_polar(u: Array, eps: Array) -> Array:
         left, right = high - ratio * (high - low), low + ratio * (high - low)
         keep = polar_risk(left, u, eps) <= polar_risk(right, u, eps)
         low, high = np.where(keep, low, left), np.where(keep, right, high)
-    return 0.5 * (low + high)
+    middle: Array = 0.5 * (low + high)
+    return middle
 
 
 def polar_risk(b: Array, u: Array, eps: Array) -> Array:
