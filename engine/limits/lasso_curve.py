@@ -17,7 +17,9 @@ __all__ = ["lasso_curve"]
 _LAST_T = 9.0
 
 
-def lasso_curve(sampling_ratio: float, sparsity: float, points: int = 256) -> tuple[Array, Array]:
+def lasso_curve(
+    sampling_ratio: float, sparsity: float, points: int = 256
+) -> tuple[Array, Array]:
     """Return the lasso boundary as (tpp, fdp), from its right end down to (0, 0).
 
     The arguments are trusted: a sampling ratio above 0 and a sparsity in (0, 1).

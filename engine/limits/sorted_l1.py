@@ -77,17 +77,13 @@ def sorted_l1_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:
     u, delta, eps = check_arrays(
         (TPP, tpp), (SAMPLING_RATIO, sampling_ratio), (SPARSITY, sparsity)
     )
-    ceiling = closed_form(u, delta, eps)
-    polar = polar_threshold(u, delta, eps)
-    points = zip(
-        *(array.ravel().tolist() for array in (u, delta, eps, polar, ceiling)), strict=True
-    )
-    return as_given(np.array([best(*point).fdp for point in points]).reshape(u.shape))
+    found = [optimum.fdp for optimum in optima(u, delta, eps)]
+    return as_given(np.array(found).reshape(u.shape))
 
 
 @dataclass(frozen=True)
 class Optimum:
-    """The boundary at one point, and the law that attains it.
+    """The boundary at one point, the polar threshold (nan without one), and the law.
 
     `sizes` and `shares` are those of the actives, in units of tau; 0 and infinity stand for
     effects that tend to 0 and outgrow tau. They are empty where no law was searched: the FDP
@@ -96,8 +92,17 @@ class Optimum:
 
     fdp: float
     threshold: float
+    polar: float
     sizes: tuple[float, ...] = ()
     shares: tuple[float, ...] = ()
+
+
+def optima(u: Array, delta: Array, eps: Array) -> list[Optimum]:
+    """Return the optimum at every point of the flattened arrays, each searched by itself."""
+    ceiling = closed_form(u, delta, eps)
+    polar = polar_threshold(u, delta, eps)
+    columns = (array.ravel().tolist() for array in (u, delta, eps, polar, ceiling))
+    return [best(*point) for point in zip(*columns, strict=True)]
 
 
 # An FDP that no study could tell from 0 is not searched further down.
@@ -115,8 +120,9 @@ def best(u: float, delta: float, eps: float, polar: float, ceiling: float) -> Op
     """
     if ceiling < NEGLIGIBLE or u == 1.0:
         at_polar = ceiling if math.isnan(polar) else fdp_of(polar, u, eps)
-        return Optimum(min(ceiling, at_polar), _threshold_of(ceiling, u, eps))
-    start = _threshold_of(ceiling, u, eps)
+        fdp = min(ceiling, at_polar)
+        return Optimum(fdp, threshold_of(fdp, u, eps), polar)
+    start = threshold_of(ceiling, u, eps)
     alpha, law = start, "single"
     if polar >= start:
         alpha, law = polar, "polar"
@@ -128,11 +134,11 @@ def best(u: float, delta: float, eps: float, polar: float, ceiling: float) -> Op
         alpha, law = split, "split"
     fdp = min(fdp_of(alpha, u, eps), ceiling)
     if law == "single":
-        return Optimum(fdp, alpha, (size_of(alpha, u),), (1.0,))
+        return Optimum(fdp, alpha, polar, (size_of(alpha, u),), (1.0,))
     if law == "polar":
         size = math.inf
     share = _share_found(alpha, u, size)
-    return Optimum(fdp, alpha, (0.0, size), (1.0 - share, share))
+    return Optimum(fdp, alpha, polar, (0.0, size), (1.0 - share, share))
 
 
 def _raised_by_single(alpha: float, u: float, delta: float, eps: float) -> float:
@@ -227,7 +233,8 @@ def fdp_of(alpha: float, u: float, eps: float) -> float:
     return false / (false + eps * u)
 
 
-def _threshold_of(fdp: float, u: float, eps: float) -> float:
+def threshold_of(fdp: float, u: float, eps: float) -> float:
+    """The zero threshold at which a list with the share u of the actives has this FDP."""
     chance = 0.5 * fdp * eps * u / ((1.0 - fdp) * (1.0 - eps))
     return max(-float(ndtri(chance)), 0.0)
 
@@ -260,11 +267,14 @@ def _least_polar(u: Array, eps: Array) -> Array:
 
 def polar_risk(b: Array, u: Array, eps: Array) -> Array:
     """Least risk of the polar law at zero threshold b."""
+    big = eps * polar_share(b, u)
+    return (1.0 - big) * null_risk(b) + big * ((1.0 + b * b) * tail(-b) + b * density(b))
+
+
+def polar_share(b: Array, u: Array) -> Array:
+    """Share of the actives that outgrows tau in the polar law at zero threshold b."""
     chance = 2.0 * tail(b)
-    big = np.clip((u - chance) / np.maximum(1.0 - chance, 1e-300), 0.0, 1.0)
-    return (1.0 - eps * big) * null_risk(b) + eps * big * (
-        (1.0 + b * b) * tail(-b) + b * density(b)
-    )
+    return np.clip((u - chance) / np.maximum(1.0 - chance, 1e-300), 0.0, 1.0)
 
 
 def _cdf(x: float) -> float:

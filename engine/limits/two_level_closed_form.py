@@ -71,10 +71,11 @@ def closed_form(u: Array, delta: Array, eps: Array) -> Array:
     eps_star = critical(delta)
     u_star = limit(delta, eps, eps_star)
     below = fdp_below_limit(np.minimum(u, u_star), delta, eps)
-    return np.where(u > u_star, _moebius(u, eps, eps_star, u > u_star), below)
+    beyond = u > u_star
+    return np.where(beyond, _moebius(np.where(beyond, u, 1.0), eps, eps_star), below)
 
 
-def _moebius(u: Array, eps: Array, eps_star: Array, valid: Array) -> Array:
+def _moebius(u: Array, eps: Array, eps_star: Array) -> Array:
     top = (1.0 - eps) * (eps * u - eps_star)
     bottom = eps * (1.0 - eps_star) * u - eps_star * (1.0 - eps)
-    return top / np.where(valid, bottom, 1.0)
+    return top / np.where(bottom > 0.0, bottom, 1.0)
