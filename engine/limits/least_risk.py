@@ -28,11 +28,13 @@ from engine.normal import Array
 
 __all__ = ["Shrinkage", "least_risk"]
 
-# Panels of Gauss-Legendre nodes. The integrand has a jump in its second derivative where a
-# pooled stretch ends, so the error falls with the cube of the spacing: the risk is right to
-# about 5e-7 of itself, and the steepest boundary point seen turns 1e-6 into 1.5e-5 of FDP.
-_PANEL = 0.1
-_ORDER = 6
+# The integrand has a jump in its second derivative where a pooled stretch ends, so the error
+# falls with the cube of the spacing whatever the rule, and even spacing keeps it smallest: the
+# risk is right to about 1e-7 of itself. The steepest boundary seen turns that into 3e-6 of FDP.
+_STEP = 0.0125
+
+# Weights of the first nodes in units of the step (Gregory's rule); all others are 1.
+_END = np.array([3.0 / 8.0, 7.0 / 6.0, 23.0 / 24.0])
 
 # The density beyond the last node, 8 standard deviations past every atom, is below 1e-14.
 _REACH = 8.0
@@ -126,14 +128,14 @@ def least_risk(
 
 def _nodes(stretch: float) -> tuple[Array, Array]:
     """Offsets from the threshold and their widths, up to `_REACH` past an atom at `stretch`."""
-    return _panels(int(np.ceil((stretch + _REACH) / _PANEL)))
+    return _evenly(int(np.ceil(stretch + _REACH)))
 
 
-@lru_cache(maxsize=256)
-def _panels(count: int) -> tuple[Array, Array]:
-    node, weight = np.polynomial.legendre.leggauss(_ORDER)
-    middle = _PANEL * (np.arange(count) + 0.5)
-    offsets = (middle[:, None] + 0.5 * _PANEL * node).ravel()
-    widths = np.tile(0.5 * _PANEL * weight, count)
+@lru_cache(maxsize=64)
+def _evenly(length: int) -> tuple[Array, Array]:
+    count = int(length / _STEP)
+    offsets = _STEP * np.arange(count)
+    widths = np.full(count, _STEP)
+    widths[: _END.size] *= _END
     offsets.flags.writeable = widths.flags.writeable = False
     return offsets, widths
