@@ -9,6 +9,7 @@ from collections.abc import Callable
 from typing import Any
 
 from bokeh.document import Document
+from panel.io import hold
 
 __all__ = ["Coalescer"]
 
@@ -40,4 +41,5 @@ class Coalescer:
 
     def _flush(self) -> None:
         pending, self._pending = self._pending, {}
-        self._apply(pending)
+        with hold(self._doc):  # the whole answer in one message
+            self._apply(pending)

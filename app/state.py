@@ -11,7 +11,7 @@ from typing import Any
 import param
 
 from app.evaluation import Evaluate
-from app.reach import Curves, Reach, reach, swift_curves
+from app.reach import Curves, Reach, read_off, swift_curves, swift_reach
 from engine.limits.families import FAMILIES
 from engine.quantities import QUANTITIES, SAMPLING_RATIO, SPARSITY
 from engine.study import Effect, Study, Target
@@ -41,8 +41,8 @@ class Session(param.Parameterized):
     Parameters
     ----------
     evaluate : callable
-        Called with (sampling_ratio, sparsity, done) when the exact curves are wanted; calls
-        `done(curves)` later, on the session's own thread.
+        Called with (target, done) when exact values are wanted, target being the arguments of
+        `app.reach.exact_reach`; calls `done(reach, curves)` later, on the session's own loop.
     """
 
     title = param.String()
@@ -66,6 +66,7 @@ class Session(param.Parameterized):
 
     def __init__(self, evaluate: Evaluate, **params: Any) -> None:
         super().__init__(**params)
+        self.typed: frozenset[str] = frozenset()  # fields of the last change that held texts
         self._evaluate = evaluate
         self._belief = dict(_BELIEF)
         self._undo: tuple[Any, ...] | None = None
@@ -75,6 +76,9 @@ class Session(param.Parameterized):
     def propose(self, changes: dict[str, Any]) -> None:
         """Take new values of fields (numbers, or texts as typed), all of them or none."""
         field = next(iter(changes))
+        self.typed = frozenset(
+            name for name, value in changes.items() if isinstance(value, str)
+        )
         try:
             values = self._read(changes)
         except ValueError as error:
@@ -141,22 +145,30 @@ class Session(param.Parameterized):
         return values
 
     def _take(self, values: dict[str, Any]) -> None:
-        after = {name: values.get(name, getattr(self, name)) for name in (*_COUNTS, "tpp", "fdp")}
+        after = {
+            name: values.get(name, getattr(self, name)) for name in (*_COUNTS, "tpp", "fdp")
+        }
         changes: dict[str, Any] = {"problem": None, "notice": ""}
         if None not in after.values():
-            changes["reach"] = reach(**after)
-            delta, eps = changes["reach"].sampling_ratio, changes["reach"].sparsity
-            if self._is_new(delta, eps):
-                changes["curves"] = swift_curves(delta, eps)
-                self._evaluate(delta, eps, self._refine)
+            changes |= self._answer(swift_reach(**after))
+            self._evaluate(tuple(after.values()), self._refine)
         self.param.update(**values, **changes, accepted=self.accepted + 1)
 
-    def _is_new(self, delta: float, eps: float) -> bool:
+    def _answer(self, swift: Reach) -> dict[str, Any]:
+        """Return what can be shown at once: open values, or read off the curves that stand."""
         old = self.reach
-        return old is None or (old.sampling_ratio, old.sparsity) != (delta, eps)
+        same = old is not None and old.study_ratios == swift.study_ratios
+        if same and self.curves.exact:
+            return {"reach": read_off(swift, self.curves)}
+        if same:
+            return {"reach": swift}
+        return {"reach": swift, "curves": swift_curves(*swift.study_ratios)}
 
-    def _refine(self, curves: Curves) -> None:
-        self.curves = curves
+    def _refine(self, reach: Reach, curves: Curves) -> None:
+        changes: dict[str, Any] = {"reach": reach}
+        if not self.curves.exact:
+            changes["curves"] = curves
+        self.param.update(**changes)
 
 
 def _number(name: str, value: Any) -> float:

@@ -1,8 +1,9 @@
 """The verdict: a sentence, with numbers, that answers what the trade-off plane shows."""
 
+import math
 from dataclasses import dataclass
 
-from app.reach import Reach
+from app.reach import SEARCHED, Reach
 from app.words import computed, count, typed
 
 __all__ = ["Piece", "plain", "verdict"]
@@ -10,10 +11,11 @@ __all__ = ["Piece", "plain", "verdict"]
 
 @dataclass(frozen=True)
 class Piece:
-    """A stretch of the sentence: plain words, the user's `target`, or a penalty's name."""
+    """A stretch of the sentence: plain words, the user's `target`, a penalty's name,
+    or a grey box for the digit still `pending`."""
 
     text: str
-    kind: str = "words"  # "words", "target", or the key of a penalty
+    kind: str = "words"  # "words", "target", "pending", or the key of a penalty
 
 
 _LASSO = Piece("lasso", "lasso")
@@ -47,43 +49,62 @@ def _trivial(reach: Reach) -> list[Piece]:
 
 
 def _within_lasso(reach: Reach) -> list[Piece]:
-    lowest = reach.lowest
     pieces = [
         Piece(" is within reach of the "),
         _LASSO,
-        Piece(f", which for the best signal gets there from FDP {computed(lowest['lasso'])}. "),
+        Piece(", which for the best signal gets there from FDP "),
+        *_value(reach, "lasso"),
+        Piece(". "),
     ]
-    if computed(lowest["sorted-l1"]) == computed(lowest["lasso"]):
+    if _open(reach):
+        return [*pieces, _FOLLOW]
+    if computed(reach.lowest["sorted-l1"]) == computed(reach.lowest["lasso"]):
         return [*pieces, Piece("No "), _SORTED_L1, Piece(" penalty gets lower.")]
-    return [*pieces, Piece("Best "), _SORTED_L1, Piece(f": {computed(lowest['sorted-l1'])}.")]
+    return [
+        *pieces,
+        Piece("Best "),
+        _SORTED_L1,
+        Piece(": "),
+        *_value(reach, "sorted-l1"),
+        _STOP,
+    ]
 
 
 def _beyond_lasso(reach: Reach) -> list[Piece]:
-    two, best = reach.lowest["two-level"], reach.lowest["sorted-l1"]
     goal = f"TPP {typed(reach.tpp)}"
-    pieces = [Piece(" is out of reach of the "), _LASSO, Piece(_why_not_lasso(reach))]
+    pieces = [Piece(" is out of reach of the "), _LASSO, *_why_not_lasso(reach)]
+    if _open(reach):
+        return [*pieces, _FOLLOW]
+    two, best = _value(reach, "two-level"), _value(reach, "sorted-l1")
     if reach.reaches("two-level"):
-        return [
-            *pieces, Piece("Two-level", "two-level"),
-            Piece(f" reaches {goal} from FDP {computed(two)}, "),
-            _SORTED_L1, Piece(f" from {computed(best)}."),
-        ]  # fmt: skip
+        first, how = Piece("Two-level", "two-level"), f" reaches {goal} from FDP "
+        return [*pieces, first, Piece(how), *two, _COMMA, _SORTED_L1, _FROM, *best, _STOP]
     if reach.reaches("sorted-l1"):
-        return [
-            *pieces, Piece("Sorted L1", "sorted-l1"),
-            Piece(f" reaches {goal} from FDP {computed(best)}, "),
-            _TWO_LEVEL, Piece(f" only from {computed(two)}."),
-        ]  # fmt: skip
-    return [
-        *pieces, Piece("Two-level", "two-level"),
-        Piece(f" can reach {goal} only from FDP {computed(two)}, "),
-        _SORTED_L1, Piece(f" from {computed(best)}."),
-    ]  # fmt: skip
+        first, how = Piece("Sorted L1", "sorted-l1"), f" reaches {goal} from FDP "
+        only = Piece(" only from ")
+        return [*pieces, first, Piece(how), *best, _COMMA, _TWO_LEVEL, only, *two, _STOP]
+    first, how = Piece("Two-level", "two-level"), f" can reach {goal} only from FDP "
+    return [*pieces, first, Piece(how), *two, _COMMA, _SORTED_L1, _FROM, *best, _STOP]
 
 
-def _why_not_lasso(reach: Reach) -> str:
+_COMMA, _STOP, _FROM = Piece(", "), Piece("."), Piece(" from ")
+_FOLLOW = Piece("The values of two-level and sorted L1 follow.")
+
+
+def _why_not_lasso(reach: Reach) -> list[Piece]:
     reason = " at any signal strength: "
     if reach.tpp >= reach.power_limit and reach.power_limit < 1.0:
-        return f"{reason}its power limit is {computed(reach.power_limit)}. "
-    at_least = computed(reach.lowest["lasso"])
-    return f"{reason}its FDP there is at least {at_least}. "
+        return [Piece(f"{reason}its power limit is {computed(reach.power_limit)}. ")]
+    return [Piece(f"{reason}its FDP there is at least "), *_value(reach, "lasso"), Piece(". ")]
+
+
+def _open(reach: Reach) -> bool:
+    return any(math.isnan(reach.lowest[key]) for key in SEARCHED)
+
+
+def _value(reach: Reach, penalty: str) -> list[Piece]:
+    """The lowest FDP: three digits, or two and a grey box while it is read off a curve."""
+    value = reach.lowest[penalty]
+    if reach.exact or penalty not in SEARCHED:
+        return [Piece(computed(value))]
+    return [Piece(computed(value, 2)), Piece("", "pending")]

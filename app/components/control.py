@@ -2,7 +2,7 @@
 
 from collections.abc import Callable
 from pathlib import Path
-from typing import Any
+from typing import Any, ClassVar
 
 import panel as pn
 import param
@@ -40,7 +40,10 @@ class Control(pn.custom.JSComponent):
     accepted = param.Integer(default=0, doc="Rises when a change was accepted.")
 
     _esm = Path(__file__).parent / "control.js"
-    _stylesheets = [SHARED, (Path(__file__).parent / "control.css").read_text()]
+    _stylesheets: ClassVar[list[str]] = [
+        SHARED,
+        (Path(__file__).parent / "control.css").read_text(),
+    ]
 
     def __init__(
         self,

@@ -22,7 +22,9 @@ export function render({model, el}) {
       item.className = `row ${row.key}`
       item.innerHTML = `<i class="sample"></i><dt></dt><dd></dd>`
       item.querySelector("dt").textContent = row.name
-      item.querySelector("dd").textContent = row.value
+      const value = item.querySelector("dd")
+      value.textContent = row.value
+      if (row.pending) value.appendChild(document.createElement("i")).className = "pending"
       item.classList.toggle("none", row.end === null)
       list.appendChild(item)
     }

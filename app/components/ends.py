@@ -1,6 +1,7 @@
 """The names and values of the curves at the right end of the trade-off plane."""
 
 from pathlib import Path
+from typing import ClassVar
 
 import panel as pn
 import param
@@ -21,4 +22,7 @@ class Ends(pn.custom.JSComponent):
     bottom = param.Number(default=FRAME_BOTTOM)
 
     _esm = Path(__file__).parent / "ends.js"
-    _stylesheets = [SHARED, (Path(__file__).parent / "ends.css").read_text()]
+    _stylesheets: ClassVar[list[str]] = [
+        SHARED,
+        (Path(__file__).parent / "ends.css").read_text(),
+    ]

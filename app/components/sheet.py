@@ -2,7 +2,7 @@
 
 from collections.abc import Callable
 from pathlib import Path
-from typing import Any
+from typing import Any, ClassVar
 
 import panel as pn
 import param
@@ -23,7 +23,10 @@ class Sheet(pn.custom.JSComponent):
     live = param.Boolean(default=False, doc="Whether screen readers announce changes.")
 
     _esm = Path(__file__).parent / "sheet.js"
-    _stylesheets = [SHARED, (Path(__file__).parent / "sheet.css").read_text()]
+    _stylesheets: ClassVar[list[str]] = [
+        SHARED,
+        (Path(__file__).parent / "sheet.css").read_text(),
+    ]
 
     def __init__(
         self, kind: str, on_use: Callable[[dict[str, Any]], None] | None = None, **params: Any

@@ -12,10 +12,16 @@ from bokeh.plotting import figure
 
 from app.theme import CANVAS_FONT, STROKES, Theme
 
-__all__ = ["FRAME_BOTTOM", "FRAME_LEFT", "FRAME_RIGHT", "FRAME_TOP", "Canvas"]
+__all__ = ["FRAME_BOTTOM", "FRAME_LEFT", "FRAME_RIGHT", "FRAME_TOP", "Canvas", "put"]
 
 # Fixed borders let the page place its own words beside the frame.
 FRAME_TOP, FRAME_BOTTOM, FRAME_LEFT, FRAME_RIGHT = 12, 46, 40, 12
+
+
+def put(source: ColumnDataSource, data: dict[str, list[Any]]) -> None:
+    """Assign short columns to `source`, unless they stand there already."""
+    if dict(source.data) != data:
+        source.data = data
 
 
 class Canvas:

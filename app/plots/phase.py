@@ -5,7 +5,7 @@ from typing import Any
 import numpy as np
 from bokeh.models import ColumnDataSource
 
-from app.plots.canvas import Canvas
+from app.plots.canvas import Canvas, put
 from app.reach import Reach
 from app.theme import Theme
 from engine import critical_sparsity
@@ -55,14 +55,14 @@ class PhasePlane:
         if (fig.x_range.end, fig.y_range.end) != (right, top):
             fig.x_range.update(end=right)
             fig.y_range.update(end=top)
-            self.notes.data = _transition_note(right, top)
+            put(self.notes, _transition_note(right, top))
         elif not self.notes.data["x"]:
-            self.notes.data = _transition_note(right, top)
-        self.study.data = {"x": [delta], "y": [eps]}
+            put(self.notes, _transition_note(right, top))
+        put(self.study, {"x": [delta], "y": [eps]})
 
     def clear(self) -> None:
         """Show the transition only."""
-        self.study.data = {"x": [], "y": []}
+        put(self.study, {"x": [], "y": []})
 
     def repaint(self, theme: Theme) -> None:
         """Take the colours of `theme`."""

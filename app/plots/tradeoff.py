@@ -5,14 +5,14 @@ from typing import Any
 import numpy as np
 from bokeh.models import ColumnDataSource
 
-from app.plots.canvas import Canvas
+from app.plots.canvas import Canvas, put
 from app.reach import Curves, Reach
 from app.theme import Theme
 from app.words import computed
 
 __all__ = ["TradeoffPlane"]
 
-_DRAWN = ("two-level-closed-form", "two-level", "sorted-l1", "lasso")
+_DRAWN = ("sorted-l1", "two-level-closed-form", "two-level", "lasso")
 _TICKS = [0.0, 0.2, 0.4, 0.6, 0.8, 1.0]
 
 
@@ -29,7 +29,9 @@ class TradeoffPlane:
             _TICKS,
         )
         empty: dict[str, list[Any]] = {key: [] for key in _DRAWN}
-        self.curves = ColumnDataSource({"tpp": [], "hatch": [], **empty}, name="tradeoff-curves")
+        self.curves = ColumnDataSource(
+            {"tpp": [], "hatch": [], **empty}, name="tradeoff-curves"
+        )
         self.rules = ColumnDataSource({"x0": [], "y0": [], "x1": [], "y1": [], "dash": []})
         self.limit = ColumnDataSource({"x": [], "y": []})
         self.notes = ColumnDataSource(_notes([]))
@@ -59,22 +61,25 @@ class TradeoffPlane:
     def show_reach(self, reach: Reach) -> None:
         """Draw the target, the power limit and picking at random."""
         u, q, limit, chance = reach.tpp, reach.fdp, reach.power_limit, reach.random_fdp
-        self.rules.data = {
-            "x0": [0.0, u, 0.0],
-            "y0": [q, 0.0, chance],
-            "x1": [u, u, 1.0],
-            "y1": [q, q, chance],
-            "dash": ["solid", "solid", "dotted"],
-        }
+        put(
+            self.rules,
+            {
+                "x0": [0.0, u, 0.0],
+                "y0": [q, 0.0, chance],
+                "x1": [u, u, 1.0],
+                "y1": [q, q, chance],
+                "dash": ["solid", "solid", "dotted"],
+            },
+        )
         shown = [limit, limit] if limit < 1.0 else []
-        self.limit.data = {"x": shown, "y": [0.0, 1.0][: len(shown)]}
-        self.target.data = {"x": [u], "y": [q]}
-        self.notes.data = _notes([*_limit_notes(reach), _random_note(reach), *_closed(reach)])
+        put(self.limit, {"x": shown, "y": [0.0, 1.0][: len(shown)]})
+        put(self.target, {"x": [u], "y": [q]})
+        put(self.notes, _notes([*_limit_notes(reach), _random_note(reach), *_closed(reach)]))
 
     def show_kept(self, kept: list[tuple[str, float, float, float]]) -> None:
         """Mark the kept points (letter, TPP, FDP, FDP of the target they stand for)."""
         letters, tpp, fdp, aimed = zip(*kept, strict=True) if kept else ((), (), (), ())
-        self.kept.data = {"text": letters, "x": tpp, "y": fdp, "y_target": aimed}
+        put(self.kept, {"text": letters, "x": tpp, "y": fdp, "y_target": aimed})
 
     def clear(self) -> None:
         """Show axes only."""

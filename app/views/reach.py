@@ -1,5 +1,6 @@
 """The Reach page: two planes, the names at the curves' ends, the verdict, and keeping."""
 
+import math
 from typing import Any
 
 import panel as pn
@@ -9,7 +10,7 @@ from app.components.ends import Ends
 from app.components.sheet import Sheet
 from app.plots.phase import PhasePlane
 from app.plots.tradeoff import TradeoffPlane
-from app.reach import Reach
+from app.reach import SEARCHED, Reach
 from app.state import Session
 from app.theme import THEMES
 from app.verdict import Piece, verdict
@@ -35,12 +36,14 @@ class ReachView:
         watch = session.param.watch
         watch(self._show_curves, ["curves", "chosen", "shown"])
         watch(self._show_reach, ["reach", "problem"])
+        watch(self._show_ends, ["reach", "shown"])
         watch(self._show_kept, ["points"])
-        watch(self._show_keep, ["reach", "chosen", "curves", "notice", "problem"])
+        watch(self._show_keep, ["reach", "chosen", "notice", "problem"])
         watch(self._repaint, ["theme"])
         self._repaint()
         self._show_curves()
         self._show_reach()
+        self._show_ends()
         self._show_kept()
         self._show_keep()
 
@@ -70,7 +73,6 @@ class ReachView:
         session = self._session
         if session.curves is not None:
             self.tradeoff.show_curves(session.curves, session.shown, session.chosen)
-        self._show_ends()
 
     def _show_reach(self, *_: Any) -> None:
         session = self._session
@@ -81,12 +83,11 @@ class ReachView:
             self.tradeoff.show_reach(session.reach)
             self.phase.show_reach(session.reach)
         self.verdict.html = _verdict_html(session)
-        self._show_ends()
 
-    def _show_ends(self) -> None:
+    def _show_ends(self, *_: Any) -> None:
         session = self._session
-        reach, curves = session.reach, session.curves
-        if reach is None or curves is None:
+        reach = session.reach
+        if reach is None:
             self.ends.param.update(heading="", rows=[], counts=[])
             return
         self.ends.param.update(
@@ -113,7 +114,8 @@ def _rows(reach: Reach, shown: tuple[str, ...]) -> list[dict[str, Any]]:
         {
             "key": key,
             "name": _SHORT.get(key, FAMILIES[key].label),
-            "value": computed(reach.lowest[key]),
+            "value": _shown_value(reach, key),
+            "pending": not reach.exact and key in SEARCHED,
             "end": _end(reach, key),
         }
         for key in shown
@@ -123,11 +125,17 @@ def _rows(reach: Reach, shown: tuple[str, ...]) -> list[dict[str, Any]]:
     return rows
 
 
+def _shown_value(reach: Reach, key: str) -> str:
+    value = reach.lowest[key]
+    if reach.exact or key not in SEARCHED:
+        return computed(value)
+    return "" if math.isnan(value) else computed(value, 2)
+
+
 def _end(reach: Reach, key: str) -> float | None:
-    """FDP at which the penalty's curve meets TPP 1; None for a lasso that ends before it."""
-    if key == "lasso" and reach.power_limit < 1.0:
-        return None
-    return reach.ends[key]
+    """FDP where the curve meets TPP 1; None for a lasso that ends before, or while it is open."""
+    end = reach.ends[key]
+    return None if math.isnan(end) else end
 
 
 def _counts(reach: Reach) -> list[list[str]]:
@@ -157,6 +165,8 @@ def _verdict_html(session: Session) -> Markup:
 def _piece(piece: Piece) -> Markup:
     if piece.kind == "words":
         return Markup("{}").format(piece.text)
+    if piece.kind == "pending":
+        return Markup('<i class="pending" title="exact when the hand rests"></i>')
     if piece.kind == "target":
         return Markup('<span class="target">{}</span>').format(piece.text)
     return Markup('<span class="family {}">{}</span>').format(piece.kind, piece.text)
@@ -165,7 +175,7 @@ def _piece(piece: Piece) -> Markup:
 def _keep_html(session: Session) -> Markup:
     """The Keep button, the penalty it keeps, and whether the curves are exact."""
     refusal = ""
-    exact = session.curves is not None and session.curves.exact
+    exact = session.reach is not None and session.reach.exact
     return Markup(
         '<button class="button strong" data-do="keep" data-key="keep" {disabled}>'
         "Keep this point <kbd>K</kbd></button>"
@@ -194,4 +204,4 @@ def _state_line(session: Session, refusal: str, exact: bool) -> Markup:
         return Markup('<p class="notice muted">{}</p>').format(refusal)
     if exact:
         return Markup('<p class="state">exact values</p>')
-    return Markup('<p class="state waiting">two curves follow</p>')
+    return Markup('<p class="state waiting">exact when the hand rests</p>')

@@ -39,9 +39,9 @@ class ShortlistView:
         files = _files(bool(points))
         chips = Markup("").join(_chip(i, point) for i, point in enumerate(points))
         empty = Markup('<span class="empty">Points you keep stand here.</span>')
-        self.strip.html = Markup(
-            '<h2>Shortlist</h2><div class="chips">{}</div>{}'
-        ).format(chips or empty, files)
+        self.strip.html = Markup('<h2>Shortlist</h2><div class="chips">{}</div>{}').format(
+            chips or empty, files
+        )
         self.table.html = _table(points, files)
 
 
@@ -90,7 +90,8 @@ def _table(points: tuple[Point, ...], files: Markup) -> Markup:
             "or import a file.</p><p>{}</p>"
         ).format(files)
     heads = Markup("").join(
-        Markup('<th class="{}" scope="col">{}</th>').format(kind, name) for name, kind in _COLUMNS
+        Markup('<th class="{}" scope="col">{}</th>').format(kind, name)
+        for name, kind in _COLUMNS
     )
     rows = Markup("").join(_row(i, point) for i, point in enumerate(points))
     return Markup(

@@ -8,7 +8,6 @@ from app.coalesce import Coalescer
 from app.components.control import Control
 from app.components.sheet import Sheet
 from app.state import Session
-from engine import critical_sparsity
 from engine.limits.families import FAMILIES
 from engine.quantities import ACTIVES, CANDIDATES, FDP, RUNS, SAMPLING_RATIO, SPARSITY, TPP
 
@@ -78,7 +77,9 @@ class StudyRail:
 
     def _update(self, name: str, changes: dict[str, Any]) -> None:
         control = self.controls[name]
-        changes = {key: value for key, value in changes.items() if getattr(control, key) != value}
+        changes = {
+            key: value for key, value in changes.items() if getattr(control, key) != value
+        }
         control.param.update(**changes, accepted=self._session.accepted)
 
     def _show_problem(self, *_: Any) -> None:
@@ -86,9 +87,9 @@ class StudyRail:
         for name, control in self.controls.items():
             ratio = _PAIRS.get(name)
             mine = problem is not None and problem.field in (name, ratio and ratio.name)
-            control.param.update(
-                error=problem.message if mine else "", error_field=problem.field if mine else ""
-            )
+            error = (problem.message, problem.field) if mine else ("", "")
+            if (control.error, control.error_field) != error:
+                control.param.update(error=error[0], error_field=error[1])
 
     def _show_choices(self, *_: Any) -> None:
         session = self._session
@@ -96,7 +97,8 @@ class StudyRail:
             '<span>New candidates keep</span><span class="segments" role="group" '
             'aria-label="New candidates keep">{}{}</span>'
         ).format(
-            _segment("counts", session.keeps_counts), _segment("ratios", not session.keeps_counts)
+            _segment("counts", session.keeps_counts),
+            _segment("ratios", not session.keeps_counts),
         )
         rows = Markup("").join(_penalty(session, key) for key in FAMILIES)
         self.penalties.html = Markup("<h2>Penalties<span>hatch</span></h2>{}").format(rows)

@@ -72,10 +72,11 @@ def closed_form(u: Array, delta: Array, eps: Array) -> Array:
     u_star = limit(delta, eps, eps_star)
     below = fdp_below_limit(np.minimum(u, u_star), delta, eps)
     beyond = u > u_star
-    return np.where(beyond, _moebius(np.where(beyond, u, 1.0), eps, eps_star), below)
+    return np.where(beyond, beyond_limit(np.where(beyond, u, 1.0), eps, eps_star), below)
 
 
-def _moebius(u: Array, eps: Array, eps_star: Array) -> Array:
+def beyond_limit(u: Array, eps: Array, eps_star: Array) -> Array:
+    """The Moebius curve, for u above a power limit below 1."""
     top = (1.0 - eps) * (eps * u - eps_star)
     bottom = eps * (1.0 - eps_star) * u - eps_star * (1.0 - eps)
     return top / np.where(bottom > 0.0, bottom, 1.0)
