@@ -24,10 +24,11 @@ from engine.limits.transition import (
     threshold_at_ratio,
     threshold_at_sparsity,
 )
+from engine.limits.witness import Law, Witness
 from engine.normal import Array, central, density, null_risk, tail
 from engine.quantities import SAMPLING_RATIO, SPARSITY, TPP
 
-__all__ = ["lasso_boundary"]
+__all__ = ["lasso_boundary", "lasso_witness"]
 
 
 def lasso_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:
@@ -75,6 +76,63 @@ def lasso_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:
     beyond = (u >= u_star) & (u_star < 1.0)
     reached = np.where(beyond, 0.5 * u_star, u)
     return as_given(np.where(beyond, np.nan, fdp_below_limit(reached, delta, eps)))
+
+
+def lasso_witness(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Witness:
+    """Law of effects with which equal weights approach the lasso boundary at a TPP.
+
+    Asymptotic, for iid Gaussian columns: at finite sizes a fit strays from the point.
+
+    Parameters
+    ----------
+    tpp : float
+        True positive proportion, in (0, 1], below the power limit where that is below 1;
+        1 means the limit from below.
+    sampling_ratio : float
+        Runs per candidate, above 0.
+    sparsity : float
+        Actives per candidate, in (0, 1).
+
+    Returns
+    -------
+    Witness
+        Its `fdp` is `lasso_boundary` at the point.
+
+    Raises
+    ------
+    ValueError
+        If an argument is not a finite number in its interval, or no lasso has this TPP.
+
+    Examples
+    --------
+    >>> from engine.limits.lasso import lasso_witness
+    >>> witness = lasso_witness(0.5, 0.3, 0.2)
+    >>> round(witness.fdp, 4), [round(share, 3) for share in witness.law.shares]
+    (0.5493, [0.624, 0.376])
+    """
+    numbers = TPP.check(tpp), SAMPLING_RATIO.check(sampling_ratio), SPARSITY.check(sparsity)
+    u, delta, eps = (np.array(number) for number in numbers)
+    u_star = limit(delta, eps, critical(delta))
+    if u >= u_star and u_star < 1.0:
+        raise ValueError(f"tpp must be below the power limit, {u_star:.6g} here, not {u:.6g}")
+    t = zero_threshold(u, delta, eps)
+    chance = 2.0 * tail(t)
+    large = (u - chance) / (1.0 - chance)  # share of the actives that outgrows tau
+    found = (1.0 - eps * large) * chance + eps * large
+    level = float(t)
+    return Witness(
+        penalty="lasso",
+        tpp=float(u),
+        fdp=float(fdp_at(t, u, eps)),
+        sampling_ratio=float(delta),
+        sparsity=float(eps),
+        zero_threshold=level,
+        law=Law((0.0, np.inf), (float(1.0 - large), float(large))),
+        risk=float((1.0 - eps * large) * null_risk(t) + eps * large * (1.0 + t * t)),
+        slope=float(found),
+        smallest_selected=0.1,
+        profile=lambda shares: np.full_like(shares, level),
+    )
 
 
 def fdp_below_limit(u: Array, delta: Array, eps: Array) -> Array:

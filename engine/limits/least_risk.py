@@ -77,12 +77,6 @@ class Shrinkage:
         beyond = float(self.mass @ (self.x**2 - self.withheld**2))  # E x^2 = 1 + E pi^2
         return 0.5 * (self.risk - self.energy + beyond)
 
-    def eta(self, x: float) -> float:
-        """Size to which an estimate of size x is shrunk, up to the last node."""
-        if x <= self.threshold:
-            return 0.0
-        return x - float(np.interp(x, self.x, self.withheld))
-
 
 def least_risk(
     threshold: float, sizes: tuple[float, ...], masses: tuple[float, ...]
@@ -134,7 +128,7 @@ def _nodes(stretch: float) -> tuple[Array, Array]:
 @lru_cache(maxsize=64)
 def _evenly(length: int) -> tuple[Array, Array]:
     count = int(length / _STEP)
-    offsets = _STEP * np.arange(count)
+    offsets = _STEP * np.arange(count, dtype=np.float64)
     widths = np.full(count, _STEP)
     widths[: _END.size] *= _END
     offsets.flags.writeable = widths.flags.writeable = False

@@ -21,7 +21,14 @@ from scipy.special import ndtri
 
 from engine.normal import Array, density, mills, null_risk, tail
 
-__all__ = ["polar_risk", "polar_share", "polar_threshold", "saturated", "saturated_threshold"]
+__all__ = [
+    "level_of",
+    "polar_risk",
+    "polar_share",
+    "polar_threshold",
+    "risk_at",
+    "saturated_threshold",
+]
 
 
 def polar_threshold(u: Array, delta: Array, eps: Array) -> Array:
@@ -39,7 +46,11 @@ def polar_threshold(u: Array, delta: Array, eps: Array) -> Array:
 
 def polar_risk(b: Array, u: Array, eps: Array) -> Array:
     """Risk at level b = alpha."""
-    x = eps * polar_share(b, u)
+    return risk_at(b, eps * polar_share(b, u))
+
+
+def risk_at(b: Array, x: Array) -> Array:
+    """R(b, x)."""
     return (1.0 - x) * null_risk(b) + x * _large_risk(b)
 
 
@@ -58,6 +69,12 @@ def saturated_threshold(u: Array, delta: Array, eps: Array) -> Array:
     return np.where(partial & (alpha <= level), alpha, np.nan)
 
 
+def level_of(alpha: Array, x: Array, delta: Array) -> Array:
+    """Level of the shrinkage at a zero threshold where the polar law has risk delta."""
+    at_alpha = risk_at(alpha, x) <= delta * (1.0 + 1e-9)
+    return np.where(at_alpha, alpha, np.maximum(alpha, saturated(delta)[0]))
+
+
 def saturated(delta: Array) -> tuple[Array, Array]:
     """The level c and the share x at which R is stationary in c and equal to delta.
 
@@ -66,7 +83,7 @@ def saturated(delta: Array) -> tuple[Array, Array]:
     c = np.interp(-delta, -_RISKS, _LEVELS)
     for _ in range(2):  # the error squares: 1e-5, 1e-10, rounding
         x, slope = _share_at(c)
-        excess = (1.0 - x) * null_risk(c) + x * _large_risk(c) - delta
+        excess = risk_at(c, x) - delta
         # R is stationary in c, so that it changes with x alone.
         change = slope * (_large_risk(c) - null_risk(c))
         c = np.where(delta < _RISKS[0], c - excess / change, c)
@@ -101,8 +118,7 @@ def _least_polar(u: Array, eps: Array) -> Array:
 def _saturated_table() -> tuple[Array, Array]:
     """Levels from the one of largest stationary R on, and R there, falling."""
     c = np.linspace(0.2, 38.0, 8000)
-    x = _share_at(c)[0]
-    risk = (1.0 - x) * null_risk(c) + x * _large_risk(c)
+    risk = risk_at(c, _share_at(c)[0])
     start = int(np.argmax(risk))
     return c[start:], risk[start:]
 

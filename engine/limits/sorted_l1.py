@@ -29,7 +29,6 @@ from scipy.special import ndtri
 from engine.arguments import as_given, check_arrays
 from engine.limits.least_risk import least_risk
 from engine.limits.polar import polar_risk, polar_threshold, saturated_threshold
-from engine.limits.polar import polar_share as polar_share
 from engine.limits.two_level_closed_form import closed_form
 from engine.normal import Array
 from engine.quantities import SAMPLING_RATIO, SPARSITY, TPP
@@ -56,7 +55,7 @@ def sorted_l1_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:
     Returns
     -------
     float or ndarray
-        FDP in [0, 1), to about 1e-6, in the broadcast shape of the arguments.
+        FDP in [0, 1), to about 2e-6, in the broadcast shape of the arguments.
 
     Raises
     ------
@@ -123,6 +122,9 @@ def best(
     `ceiling` is an FDP that is known to be reached, `polar` and `saturated` are the thresholds
     of the polar law (nan where there is none): the search starts from the best of them.
     """
+    if u == 1.0 and math.isnan(polar):
+        # The limit is at threshold 0, where any law is selected whole.
+        return Optimum(ceiling, 0.0, polar, (0.0,), (1.0,))
     known = [threshold_of(ceiling, u, eps), polar, saturated]
     alpha = max((a for a in known if math.isfinite(a)), default=polar)
     sizes, shares = _split_law(alpha, u, math.inf)
@@ -143,7 +145,9 @@ def _raised_by_single(alpha: float, u: float, delta: float, eps: float) -> float
         return least_risk(a, (size_of(a, u),), (eps,)).risk - delta
 
     value = excess(alpha)
-    return rising_root(excess, alpha, value, 0.05, _ACCURACY) if value < 0.0 else alpha
+    if value >= 0.0:
+        return alpha
+    return rising_root(excess, alpha, value, 0.05, _ACCURACY * min(alpha, 1.0))
 
 
 # The split family is tried where the polar one nearly meets the sampling ratio: it has been
@@ -208,10 +212,10 @@ def _split_law(
     A size too small to be found that often gives way to the common size.
     """
     at_zero, at_size = _surplus(0.0, alpha, u), _surplus(size, alpha, u)
-    if at_zero >= 0.0 or at_size <= 0.0:
+    if at_zero >= 0.0 or at_size < 0.0:
         return (size_of(alpha, u),), (1.0,)
     share = at_zero / (at_zero - at_size)
-    return (0.0, size), (1.0 - share, share)
+    return ((0.0, size), (1.0 - share, share)) if share < 1.0 else ((size,), (1.0,))
 
 
 def size_of(alpha: float, u: float) -> float:
