@@ -5,7 +5,9 @@ Rooms, from the ground up (each imports only rooms above it in this list):
 - quantities: every user-facing quantity, declared once
 - normal: the normal law and the moments of soft thresholding
 - arguments: the boundary where arrays are checked
-- limits: whatever the signal: transition, lasso, two-level, sorted L1, witnesses
+- roots: one-dimensional searches
+- limits: whatever the signal: transition, lasso, two-level, sorted L1, and witnesses of each;
+  limits/families lists the penalties
 - files: strict JSON
 - study, shortlist: what the user plans, what the user keeps; their files
 - schemas: the JSON Schemas of both files
@@ -13,6 +15,7 @@ Rooms, from the ground up (each imports only rooms above it in this list):
 The engine needs numpy and scipy only. It opens no folder and shows nothing.
 """
 
+from engine.limits.families import witness
 from engine.limits.lasso import lasso_boundary
 from engine.limits.sorted_l1 import sorted_l1_boundary
 from engine.limits.transition import critical_sparsity, power_limit
@@ -26,4 +29,5 @@ __all__ = [
     "sorted_l1_boundary",
     "two_level_boundary",
     "two_level_closed_form",
+    "witness",
 ]

@@ -57,7 +57,9 @@ def parse(content: bytes | str, limit: int, what: str = "file") -> dict[str, Any
     try:
         text = raw.decode("utf-8-sig")
     except UnicodeDecodeError as error:
-        raise ValueError(f"{what} must be UTF-8, not other bytes (at byte {error.start})") from None
+        raise ValueError(
+            f"{what} must be UTF-8, not other bytes (at byte {error.start})"
+        ) from None
     try:
         data = json.loads(text, object_pairs_hook=_once, parse_constant=_not_finite)
     except json.JSONDecodeError as error:
@@ -107,7 +109,9 @@ def check_text(value: Any, where: str, most: int) -> str:
     try:
         value.encode("utf-8")
     except UnicodeEncodeError:
-        raise ValueError(f"{where} must be a text of whole characters, not {shown(value)}") from None
+        raise ValueError(
+            f"{where} must be a text of whole characters, not {shown(value)}"
+        ) from None
     return value
 
 

@@ -13,17 +13,25 @@ import numpy.typing as npt
 
 __all__ = [
     "ACTIVES",
+    "CALIBRATION",
     "CANDIDATES",
+    "CRITICAL_SPARSITY",
     "EFFECT_SCALE",
     "EFFECT_SIZE",
     "FDP",
     "NOISE_SD",
+    "POWER_LIMIT",
     "QUANTITIES",
+    "RISK",
     "RUNS",
     "SAMPLING_RATIO",
     "SHARE",
+    "SIZE_IN_TAU",
+    "SLOPE",
     "SPARSITY",
     "TPP",
+    "WEIGHT",
+    "ZERO_THRESHOLD",
     "Quantity",
     "shown",
 ]
@@ -136,6 +144,8 @@ def shown(value: Any) -> str:
     """Return `value` as an error message shows it: short, and on one line."""
     if isinstance(value, np.generic):
         value = value.item()
+    if isinstance(value, int) and abs(value) >= 10**60:
+        return "a number of more than 60 digits"
     if isinstance(value, float) and value.is_integer() and abs(value) < 1e15:
         value = int(value)
     text = repr(value)
@@ -202,6 +212,46 @@ SHARE = Quantity(
     "share", "Share", "w", "share of the actives",
     "Share of the actives that has this effect; the shares sum to 1",
     0.0, 1.0, low_open=True, slider=(0.01, 1.0),
+)  # fmt: skip
+ZERO_THRESHOLD = Quantity(
+    "zero_threshold", "Zero threshold", "α", "tau",
+    "Estimates before shrinkage that are smaller than this are set to 0",
+    0.0, math.inf,
+)  # fmt: skip
+CALIBRATION = Quantity(
+    "calibration", "Calibration", "", "share",
+    "1 - E eta' / sampling ratio: what the weights are of tau times the normalised weights",
+    0.0, 1.0,
+)  # fmt: skip
+WEIGHT = Quantity(
+    "weight", "Normalised weight", "", "tau",
+    "Weight of a rank before calibration",
+    0.0, math.inf,
+)  # fmt: skip
+SIZE_IN_TAU = Quantity(
+    "size", "Size", "", "tau",
+    "Effect of an active in units of tau, the effective noise of the fit",
+    0.0, math.inf, low_open=True,
+)  # fmt: skip
+RISK = Quantity(
+    "risk", "Risk", "", "tau squared",
+    "Mean squared error per candidate",
+    0.0, math.inf,
+)  # fmt: skip
+SLOPE = Quantity(
+    "slope", "Slope", "E η'", "per candidate",
+    "Limit of the number of distinct nonzero sizes in the fit, per candidate",
+    0.0, 1.0,
+)  # fmt: skip
+CRITICAL_SPARSITY = Quantity(
+    "critical_sparsity", "Critical sparsity", "ε*", "actives per candidate",
+    "Sparsity of the phase transition; 1 where the sampling ratio is at least 1",
+    0.0, 1.0, low_open=True,
+)  # fmt: skip
+POWER_LIMIT = Quantity(
+    "power_limit", "Power limit", "u*", "share of the actives",
+    "TPP that the lasso cannot pass; 1 where there is no such limit",
+    0.0, 1.0, low_open=True,
 )  # fmt: skip
 
 QUANTITIES = {

@@ -47,7 +47,7 @@ _SHARE_SLACK = 1e-9
 
 @dataclass(frozen=True)
 class Effect:
-    """One size of effect, per standard deviation of its column, and its share of the actives."""
+    """One size of effect, per standard deviation of its column, and the share that has it."""
 
     size: float
     share: float
@@ -80,7 +80,7 @@ class Target:
 
 @dataclass(frozen=True)
 class Study:
-    """A study in the user's units; build it with `study_from` or `load_study`, which check it."""
+    """A study in the user's units; `study_from` and `load_study` build and check it."""
 
     title: str
     runs: int
@@ -166,7 +166,9 @@ def study_from(data: Any, where: str = "") -> Study:
 def check_actives(actives: int, candidates: int, at: str = "") -> None:
     """Refuse actives that are not fewer than the candidates."""
     if actives >= candidates:
-        raise ValueError(f"{at}actives must be smaller than candidates ({candidates}), not {actives}")
+        raise ValueError(
+            f"{at}actives must be smaller than candidates ({candidates}), not {actives}"
+        )
 
 
 def _effects(data: Any, where: str) -> tuple[Effect | Spread, ...]:
@@ -195,4 +197,6 @@ def _effect(data: Any, where: str) -> Effect | Spread:
 
 def _target(data: Any, where: str) -> Target:
     check_keys(data, where, ("tpp", "fdp"))
-    return Target(TPP.check(data["tpp"], f"{where}.tpp"), FDP.check(data["fdp"], f"{where}.fdp"))
+    return Target(
+        TPP.check(data["tpp"], f"{where}.tpp"), FDP.check(data["fdp"], f"{where}.fdp")
+    )

@@ -108,7 +108,7 @@ def lasso_witness(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Witness:
     >>> from engine.limits.lasso import lasso_witness
     >>> witness = lasso_witness(0.5, 0.3, 0.2)
     >>> round(witness.fdp, 4), [round(share, 3) for share in witness.law.shares]
-    (0.5493, [0.624, 0.376])
+    (0.5493, [0.59, 0.41])
     """
     numbers = TPP.check(tpp), SAMPLING_RATIO.check(sampling_ratio), SPARSITY.check(sparsity)
     u, delta, eps = (np.array(number) for number in numbers)

@@ -25,7 +25,8 @@ import numpy as np
 from scipy.special import ndtri
 
 from engine.arguments import as_given, check_arrays
-from engine.limits.sorted_l1 import NEGLIGIBLE, optima, polar_share, threshold_of
+from engine.limits.polar import polar_share
+from engine.limits.sorted_l1 import NEGLIGIBLE, optima, threshold_of
 from engine.limits.two_level_closed_form import closed_form
 from engine.limits.two_level_moments import null_risk_and_slope, risk_and_slope, selected
 from engine.normal import Array, density, tail
@@ -255,7 +256,8 @@ def common_size(b: Array, u: Array) -> Array:
         slope = (density(t - b) - density(t + b)) / (2.0 * t)
         step = (selected(t, b) - u) / np.maximum(slope, 1e-300)
         square = np.where(step < square, square - step, 0.25 * square)
-    return np.sqrt(square)
+    size: Array = np.sqrt(square)
+    return size
 
 
 def _share(size: Array, b: Array, u: Array) -> Array:

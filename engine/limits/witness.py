@@ -49,6 +49,10 @@ class Witness:
         eta(zero_threshold + 0.1): how large an estimate just past the threshold comes out.
     profile : callable
         Normalised weight at the ranks that stand the shares r in (0, 1) from the top.
+    levels : tuple of float or None
+        The two levels of a two-level penalty, the larger first.
+    level_share : float or None
+        Share of the ranks that has the larger level.
     """
 
     penalty: str
@@ -62,6 +66,8 @@ class Witness:
     slope: float
     smallest_selected: float
     profile: Callable[[Array], Array] = field(repr=False, compare=False)
+    levels: tuple[float, float] | None = None
+    level_share: float | None = None
 
     @property
     def calibration(self) -> float:
