@@ -97,9 +97,11 @@ class Optimum:
 
 def optima(u: Array, delta: Array, eps: Array) -> list[Optimum]:
     """Return the optimum at every point of the flattened arrays, each searched by itself."""
+    ceiling = closed_form(u, delta, eps)
+    u = np.where(1.0 - u < _ROUNDED, 1.0, u)
     columns = (
         u, delta, eps,
-        closed_form(u, delta, eps),
+        ceiling,
         polar_threshold(u, delta, eps),
         saturated_threshold(u, delta, eps),
     )  # fmt: skip
@@ -109,6 +111,9 @@ def optima(u: Array, delta: Array, eps: Array) -> list[Optimum]:
 
 # An FDP that no study could tell from 0 is not searched further down.
 NEGLIGIBLE = 1e-9
+
+# A TPP this close to 1 is told from 1 by rounding only.
+_ROUNDED = 1e-12
 
 # The last secant step is shorter; the error left is smaller by far, as secant steps shrink.
 _ACCURACY = 1e-6
