@@ -14,9 +14,9 @@ from typing import Any
 
 from bokeh.document import Document
 
-from app.reach import Curves, Reach, exact_curves, exact_reach
+from app.reach import Curves, Reach, exact
 
-__all__ = ["Evaluate", "evaluator", "exact", "start_workers"]
+__all__ = ["Evaluate", "evaluator", "start_workers"]
 
 Target = tuple[int, int, int, float, float]
 Done = Callable[[Reach, Curves], None]
@@ -54,16 +54,11 @@ def evaluator(doc: Document) -> Evaluate:
     return evaluate
 
 
-def exact(*target: Any) -> tuple[Reach, Curves]:
-    """Evaluate the limits at a target and along TPP; runs in a worker."""
-    reach = exact_reach(*target)
-    return reach, exact_curves(reach.sampling_ratio, reach.sparsity)
-
-
 @lru_cache(maxsize=1)
 def start_workers() -> ProcessPoolExecutor:
-    """Start the worker process; it imports the engine and numbers, not the pictures."""
+    """Start the worker process, which imports `app.reach` and the engine but no pictures."""
     pool = ProcessPoolExecutor(1, mp_context=multiprocessing.get_context("spawn"))
+    pool.submit(exact, 30, 100, 20, 0.5, 0.5)  # the first answer pays for the imports
     atexit.register(pool.shutdown, cancel_futures=True)
     return pool
 

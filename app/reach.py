@@ -3,6 +3,7 @@
 import math
 from dataclasses import dataclass, replace
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 
@@ -20,6 +21,7 @@ __all__ = [
     "SEARCHED",
     "Curves",
     "Reach",
+    "exact",
     "exact_curves",
     "exact_reach",
     "read_off",
@@ -145,6 +147,12 @@ def exact_reach(runs: int, candidates: int, actives: int, tpp: float, fdp: float
         ends={**swift.ends, **{key: both[1] for key, both in found.items()}},
         exact=True,
     )
+
+
+def exact(*target: Any) -> tuple[Reach, Curves]:
+    """Evaluate the limits at a target and along TPP; this is what workers run."""
+    reach = exact_reach(*target)
+    return reach, exact_curves(*reach.study_ratios)
 
 
 def swift_curves(sampling_ratio: float, sparsity: float) -> Curves:

@@ -12,6 +12,7 @@ from panel.io.server import get_server
 from tornado.httputil import HTTPHeaders, HTTPServerRequest
 from tornado.web import OutputTransform
 
+from app.evaluation import start_workers
 from app.views.shell import page
 from engine.study import Study
 
@@ -24,12 +25,19 @@ DEFAULT_PORT = 8463
 # window is gone are kept for two minutes, so that a reload or a short sleep loses nothing.
 _SESSION_LIFETIME_MS = 120_000
 
+_POLICY = (
+    "default-src 'self' data: blob:",
+    # BokehJS builds functions from text.
+    "script-src 'self' 'unsafe-inline' 'unsafe-eval' blob:",
+    "style-src 'self' 'unsafe-inline'",
+    "connect-src 'self' blob: data: ws://127.0.0.1:* ws://localhost:*",
+    "frame-ancestors 'none'",
+    "form-action 'none'",
+    "base-uri 'self'",
+)
+
 _HEADERS = {
-    "Content-Security-Policy": (
-        "default-src 'self' data: blob:; script-src 'self' 'unsafe-inline' 'unsafe-eval' blob:; "
-        "style-src 'self' 'unsafe-inline'; connect-src 'self' blob: data: ws://127.0.0.1:* ws://localhost:*; "
-        "frame-ancestors 'none'; form-action 'none'; base-uri 'self'"
-    ),
+    "Content-Security-Policy": "; ".join(_POLICY),
     "X-Content-Type-Options": "nosniff",
     "Referrer-Policy": "no-referrer",
     "Cross-Origin-Opener-Policy": "same-origin",
@@ -54,6 +62,7 @@ def serve(study: Study | None, port: int | None = None, browser: bool = True) ->
         Exit code: 0 after an orderly stop, 1 when the port cannot be had.
     """
     quicken_sockets()
+    start_workers()
     try:
         server = _listen(study, port)
     except OSError as error:

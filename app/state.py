@@ -6,17 +6,29 @@ checked as a whole before any of it is taken; a bad one leaves everything as it 
 """
 
 import dataclasses
+import math
+from importlib import resources
 from typing import Any
 
 import param
 
 from app.evaluation import Evaluate
 from app.reach import Curves, Reach, read_off, swift_curves, swift_reach
+from app.words import computed, typed
+from engine.files import SHORTLIST_BYTES, STUDY_BYTES
 from engine.limits.families import FAMILIES
 from engine.quantities import QUANTITIES, SAMPLING_RATIO, SPARSITY
-from engine.study import Effect, Study, Target
+from engine.shortlist import MOST_POINTS, Point, dump_shortlist, keep, load_shortlist
+from engine.study import (
+    TITLE_LENGTH,
+    Effect,
+    Study,
+    Target,
+    check_actives,
+    load_study,
+)
 
-__all__ = ["Problem", "Session"]
+__all__ = ["Problem", "Session", "point_letter"]
 
 
 @dataclasses.dataclass(frozen=True)
@@ -69,7 +81,7 @@ class Session(param.Parameterized):
         self.typed: frozenset[str] = frozenset()  # fields of the last change that held texts
         self._evaluate = evaluate
         self._belief = dict(_BELIEF)
-        self._undo: tuple[Any, ...] | None = None
+        self._before: tuple[Point, ...] | None = None  # the points before the last change
 
     # ---- the study and its target
 
@@ -102,9 +114,22 @@ class Session(param.Parameterized):
         target = Target(tpp=self.tpp, fdp=self.fdp)
         return Study(title=self.title, **counts, **self._belief, target=target)
 
+    def open_example(self) -> None:
+        """Open the demo study."""
+        self.open_study(load_study(asset("demo-study.json")))
+
+    def open_file(self, upload: dict[str, Any]) -> None:
+        """Open the study file that the browser read, or say what is wrong with it."""
+        try:
+            study = load_study(_uploaded(upload, STUDY_BYTES, "study file"))
+        except ValueError as error:
+            self.problem = Problem("file", f"{upload['name']}: {error}")
+            return
+        self.open_study(study)
+
     def rename_study(self, title: str) -> None:
         """Give the study another title."""
-        self.title = title.strip()[:200]
+        self.title = title.strip()[:TITLE_LENGTH]
 
     def keep_counts(self, counts: bool) -> None:
         """Choose what a change of the candidates leaves as it is: counts or ratios."""
@@ -124,6 +149,85 @@ class Session(param.Parameterized):
         """Change between light and dark."""
         self.theme = "dark" if self.theme == "light" else "light"
 
+    # ---- the shortlist
+
+    def cannot_keep(self) -> str:
+        """Why the chosen penalty has no point at the target's TPP; empty when it has one."""
+        if self.reach is None:
+            return "runs, candidates and actives come first"
+        if FAMILIES[self.chosen].witness is None:
+            return "the closed form is a curve of two-level: keep it as two-level"
+        if self.chosen == "lasso" and math.isnan(self.reach.lowest["lasso"]):
+            return f"no lasso has TPP {typed(self.tpp)}: its power limit is lower"
+        return ""
+
+    def keep_point(self) -> None:
+        """Keep the point of lowest FDP that the chosen penalty has at the target's TPP."""
+        study = self.study()
+        if study is None or self.cannot_keep():
+            return
+        if len(self.points) >= MOST_POINTS:
+            self.notice = f"A shortlist holds at most {MOST_POINTS} points."
+            return
+        label = FAMILIES[self.chosen].label
+        name = f"{label[0].upper()}{label[1:]} at TPP {typed(self.tpp)}"
+        point = keep(study, self.chosen, self.tpp, name)
+        letter = point_letter(len(self.points))
+        notice = (
+            f"Kept as {letter}: {label}, TPP {typed(point.tpp)}, FDP {computed(point.fdp)}."
+        )
+        self._set_points((*self.points, point), notice)
+
+    def remove(self, index: int) -> None:
+        """Remove a kept point."""
+        if not 0 <= index < len(self.points):
+            return
+        rest = self.points[:index] + self.points[index + 1 :]
+        self._set_points(rest, f"{self.points[index].name} removed.")
+
+    def undo(self) -> None:
+        """Take the last change of the shortlist back."""
+        if self._before is not None:
+            self.param.update(points=self._before, notice="")
+            self._before = None
+
+    def import_points(self, upload: dict[str, Any]) -> None:
+        """Add the points of the shortlist file that the browser read: all of them or none."""
+        try:
+            new = load_shortlist(_uploaded(upload, SHORTLIST_BYTES, "shortlist file"))
+            total = len(self.points) + len(new)
+            if total > MOST_POINTS:
+                raise ValueError(f"points must be at most {MOST_POINTS} in all, not {total}")
+        except ValueError as error:
+            self.problem = Problem("file", f"{upload['name']}: {error}")
+            return
+        added = [point for point in new if point not in self.points]
+        same = len(new) - len(added)
+        notice = f"{len(added)} added" + (f", {same} already there." if same else ".")
+        self.problem = None
+        self._set_points((*self.points, *added), notice)
+
+    def exported(self) -> str:
+        """Return the text of the shortlist's file."""
+        return dump_shortlist(self.points)
+
+    def kept_marks(self) -> list[tuple[str, float, float, float]]:
+        """Return letter, TPP, FDP and target FDP of the points kept on the study as it stands.
+
+        The target is the point's own FDP where that reaches it: then no stem joins the two.
+        """
+        marks = []
+        for i, point in enumerate(self.points):
+            kept = (point.study.sampling_ratio, point.study.sparsity)
+            if self.reach is not None and kept == self.reach.study_ratios:
+                target = point.study.target
+                missed = (
+                    target is not None and target.tpp == point.tpp and target.fdp < point.fdp
+                )
+                aimed = target.fdp if missed else point.fdp
+                marks.append((point_letter(i), point.tpp, point.fdp, aimed))
+        return marks
+
     # ---- workings
 
     def _read(self, changes: dict[str, Any]) -> dict[str, Any]:
@@ -138,10 +242,8 @@ class Session(param.Parameterized):
                 if old is not None and count not in values:
                     values[count] = max(1, round(old * candidates / self.candidates))
         actives = values.get("actives", self.actives)
-        if actives is not None and candidates is not None and actives >= candidates:
-            raise ValueError(
-                f"actives must be smaller than candidates ({candidates}), not {actives}"
-            )
+        if actives is not None and candidates is not None:
+            check_actives(actives, candidates)
         return values
 
     def _take(self, values: dict[str, Any]) -> None:
@@ -164,11 +266,35 @@ class Session(param.Parameterized):
             return {"reach": swift}
         return {"reach": swift, "curves": swift_curves(*swift.study_ratios)}
 
+    def _set_points(self, points: tuple[Point, ...], notice: str) -> None:
+        self._before = self.points
+        self.param.update(points=points, notice=notice)
+
     def _refine(self, reach: Reach, curves: Curves) -> None:
         changes: dict[str, Any] = {"reach": reach}
         if not self.curves.exact:
             changes["curves"] = curves
         self.param.update(**changes)
+
+
+def point_letter(index: int) -> str:
+    """Name the kept points A to Z, then A2, B2 and so on."""
+    turn, place = divmod(index, 26)
+    return chr(ord("A") + place) + (str(turn + 1) if turn else "")
+
+
+def asset(name: str) -> bytes:
+    """Return the content of a file in assets/."""
+    return resources.files("app.assets").joinpath(name).read_bytes()
+
+
+def _uploaded(upload: dict[str, Any], limit: int, what: str) -> str:
+    """The text of an upload; one that the browser found too large arrives without it."""
+    if upload["size"] > limit:
+        raise ValueError(
+            f"{what} must be at most {limit / 1e6:.0f} MB, not {upload['size'] / 1e6:.3g} MB"
+        )
+    return str(upload["text"])
 
 
 def _number(name: str, value: Any) -> float:

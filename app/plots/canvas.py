@@ -10,7 +10,7 @@ from bokeh.models import ColumnDataSource, GlyphRenderer, NumeralTickFormatter
 from bokeh.models.tickers import FixedTicker
 from bokeh.plotting import figure
 
-from app.theme import CANVAS_FONT, STROKES, Theme
+from app.theme import CANVAS_FONT, STROKES, THEMES, Theme
 
 __all__ = ["FRAME_BOTTOM", "FRAME_LEFT", "FRAME_RIGHT", "FRAME_TOP", "Canvas", "put"]
 
@@ -48,7 +48,8 @@ class Canvas:
         x_ticks: list[float] | None = None,
         y_ticks: list[float] | None = None,
     ) -> None:
-        self._tokens: list[tuple[Any, str, str]] = []
+        self._theme = THEMES["light"]
+        self._tokens: dict[tuple[str, str], tuple[Any, str]] = {}
         self.figure = fig = figure(
             name=name,
             x_range=x_range,
@@ -67,11 +68,14 @@ class Canvas:
 
     def token(self, model: Any, **tokens: str) -> None:
         """Let each named colour property of `model` follow a token of the theme."""
-        self._tokens += [(model, prop, token) for prop, token in tokens.items()]
+        for prop, token in tokens.items():
+            self._tokens[model.id, prop] = (model, token)
+            setattr(model, prop, getattr(self._theme, token))
 
     def repaint(self, theme: Theme) -> None:
         """Set every colour from `theme`."""
-        for model, prop, token in self._tokens:
+        self._theme = theme
+        for (_, prop), (model, token) in self._tokens.items():
             setattr(model, prop, getattr(theme, token))
 
     def curve(self, key: str, source: ColumnDataSource, x: str, y: str) -> list[GlyphRenderer]:

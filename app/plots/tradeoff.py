@@ -7,7 +7,7 @@ from bokeh.models import ColumnDataSource
 
 from app.plots.canvas import Canvas, put
 from app.reach import Curves, Reach
-from app.theme import Theme
+from app.theme import STROKES, Theme
 from app.words import computed
 
 __all__ = ["TradeoffPlane"]
@@ -52,6 +52,8 @@ class TradeoffPlane:
         none = np.isnan(curves.fdp[hatched])
         # Beyond the power limit nothing is in the lasso's reach; an open curve hatches nothing.
         fill = 1.0 if hatched == "lasso" else 0.0
+        colour = STROKES[hatched].colour
+        self.canvas.token(self._hatch, fill_color=colour, hatch_color=colour)
         self.curves.data = {
             "tpp": curves.tpp,
             "hatch": np.where(none, fill, curves.fdp[hatched]),
@@ -108,8 +110,7 @@ class TradeoffPlane:
             level="underlay",
         )
         canvas.token(floor.glyph, fill_color="ink")
-        canvas.token(hatch.glyph, fill_color="lasso", hatch_color="lasso")
-        self.hatch = hatch
+        self._hatch = hatch.glyph
         rules = fig.segment(
             "x0", "y0", "x1", "y1", source=self.rules, line_width=1, line_dash="dash",
             level="underlay",

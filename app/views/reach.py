@@ -37,8 +37,8 @@ class ReachView:
         watch(self._show_curves, ["curves", "chosen", "shown"])
         watch(self._show_reach, ["reach", "problem"])
         watch(self._show_ends, ["reach", "shown"])
-        watch(self._show_kept, ["points"])
-        watch(self._show_keep, ["reach", "chosen", "notice", "problem"])
+        watch(self._show_kept, ["points", "curves"])
+        watch(self._show_keep, ["reach", "chosen", "notice", "problem", "points"])
         watch(self._repaint, ["theme"])
         self._repaint()
         self._show_curves()
@@ -97,7 +97,7 @@ class ReachView:
         )
 
     def _show_kept(self, *_: Any) -> None:
-        self.tradeoff.show_kept([])
+        self.tradeoff.show_kept(self._session.kept_marks())
 
     def _show_keep(self, *_: Any) -> None:
         self.keep.html = _keep_html(self._session)
@@ -133,7 +133,7 @@ def _shown_value(reach: Reach, key: str) -> str:
 
 
 def _end(reach: Reach, key: str) -> float | None:
-    """FDP where the curve meets TPP 1; None for a lasso that ends before, or while it is open."""
+    """FDP where the curve meets TPP 1; None where it ends before, or is still open."""
     end = reach.ends[key]
     return None if math.isnan(end) else end
 
@@ -155,8 +155,8 @@ def _verdict_html(session: Session) -> Markup:
         return Markup('<p class="problem">{}</p>').format(session.problem.message)
     if session.reach is None:
         return Markup(
-            '<p>Type <span class="target">runs, candidates, actives</span>, or open the example '
-            'study.</p><p><button class="button" data-do="example" data-key="example">'
+            '<p>Type <span class="target">runs, candidates, actives</span>, or open the '
+            'example study.</p><p><button class="button" data-do="example" data-key="example">'
             "Open the example</button></p>"
         )
     return Markup("<p>{}</p>").format(Markup("").join(map(_piece, verdict(session.reach))))
@@ -174,13 +174,14 @@ def _piece(piece: Piece) -> Markup:
 
 def _keep_html(session: Session) -> Markup:
     """The Keep button, the penalty it keeps, and whether the curves are exact."""
-    refusal = ""
+    refusal = session.cannot_keep()
     exact = session.reach is not None and session.reach.exact
     return Markup(
         '<button class="button strong" data-do="keep" data-key="keep" {disabled}>'
         "Keep this point <kbd>K</kbd></button>"
-        '<div class="keep-as">as <span class="segments" role="group" aria-label="Penalty to keep">'
-        "{options}</span></div>{state}"
+        '<div class="keep-as">as <span class="segments" role="group" '
+        'aria-label="Penalty to keep">{options}'
+        "</span></div>{state}"
     ).format(
         disabled=Markup('disabled title="{}"').format(refusal) if refusal else "",
         options=Markup("").join(

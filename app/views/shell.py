@@ -13,6 +13,7 @@ from app.evaluation import evaluator
 from app.state import Session
 from app.theme import css_variables
 from app.views.reach import ReachView
+from app.views.shortlist import ShortlistView
 from app.views.study import StudyRail
 from engine.files import STUDY_BYTES
 from engine.study import Study
@@ -37,12 +38,13 @@ def page(study: Study | None) -> pn.Template:
     inbox = Coalescer(doc, session.propose)
     rail = StudyRail(session, inbox)
     reach = ReachView(session)
+    shortlist = ShortlistView(session)
     frame = _Frame(session)
     if study is not None:
         session.open_study(study)
     template = pn.Template((_HERE / "page.html").read_text())
     for name, root in {
-        **frame.roots(), **rail.roots(), **reach.roots()
+        **frame.roots(), **rail.roots(), **reach.roots(), **shortlist.roots()
     }.items():  # fmt: skip
         template.add_panel(name, root)
     for name, text in _variables(session).items():

@@ -5,11 +5,11 @@ from typing import Any
 from markupsafe import Markup
 
 from app.components.sheet import Sheet
-from app.state import Session
-from app.words import computed, count, ratio, typed
+from app.state import Session, point_letter
+from app.words import computed, count, ratio, significant, typed
 from engine.files import SHORTLIST_BYTES
 from engine.limits.families import FAMILIES
-from engine.shortlist import Point
+from engine.shortlist import LIMIT_KEYS, Point
 
 __all__ = ["ShortlistView"]
 
@@ -23,6 +23,10 @@ class ShortlistView:
         self.table = Sheet("table", self._use)
         session.param.watch(self._show, ["points"])
         self._show()
+
+    def roots(self) -> dict[str, Any]:
+        """Everything the page places, by name."""
+        return {"strip": self.strip, "table": self.table}
 
     def _use(self, data: dict[str, Any]) -> None:
         session = self._session
@@ -45,12 +49,6 @@ class ShortlistView:
         self.table.html = _table(points, files)
 
 
-def letter(index: int) -> str:
-    """Name the kept points A to Z, then A2, B2 and so on."""
-    turn, place = divmod(index, 26)
-    return chr(ord("A") + place) + (str(turn + 1) if turn else "")
-
-
 def _chip(index: int, point: Point) -> Markup:
     return Markup(
         '<div class="chip"><span class="letter">{letter}</span><span><b>{name}</b>'
@@ -58,7 +56,7 @@ def _chip(index: int, point: Point) -> Markup:
         '<button class="cross" data-do="remove" data-index="{index}" data-key="remove-{index}" '
         'aria-label="Remove {letter}">×</button></div>'
     ).format(
-        letter=letter(index),
+        letter=point_letter(index),
         name=point.name,
         family=FAMILIES[point.penalty].label,
         tpp=typed(point.tpp),
@@ -71,15 +69,17 @@ def _files(some: bool) -> Markup:
     return Markup(
         '<label class="button">Import<input class="visually-hidden" type="file" '
         'accept=".json,application/json" data-do="import" data-limit="{}" data-key="import">'
-        '</label><button class="button" data-do="export" data-key="export" {}>Export JSON</button>'
+        '</label><button class="button" data-do="export" data-key="export" {}>'
+        "Export JSON</button>"
     ).format(SHORTLIST_BYTES, "" if some else Markup("disabled"))
 
 
 _COLUMNS = (
-    ("", "words"), ("Name", "words"), ("Penalty", "words"), ("Runs", ""), ("Candidates", ""),
-    ("Actives", ""), ("Sampling ratio", ""), ("Sparsity", ""), ("TPP", ""), ("FDP", ""),
-    ("Lasso", ""), ("Closed form", ""), ("Two-level", ""), ("Sorted L1", ""),
-    ("Power limit", ""), ("Zero threshold, τ", ""), ("", ""),
+    ("", "words"), ("Name", "words"), ("Study", "words"), ("Runs", ""), ("Candidates", ""),
+    ("Actives", ""), ("Sampling ratio", ""), ("Sparsity", ""), ("Penalty", "words"),
+    ("TPP", ""), ("FDP", ""), ("Lasso", "group"), ("Closed form", "group"),
+    ("Two-level", "group"), ("Sorted L1", "group"), ("Power limit", "group"),
+    ("Zero threshold, τ", ""), ("Attained", "words"), ("", ""),
 )  # fmt: skip
 
 
@@ -87,7 +87,7 @@ def _table(points: tuple[Point, ...], files: Markup) -> Markup:
     if not points:
         return Markup(
             '<p class="empty">No points yet. On Reach, set a target and press Keep this point; '
-            "or import a file.</p><p>{}</p>"
+            'or import a file.</p><p class="files">{}</p>'
         ).format(files)
     heads = Markup("").join(
         Markup('<th class="{}" scope="col">{}</th>').format(kind, name)
@@ -95,21 +95,39 @@ def _table(points: tuple[Point, ...], files: Markup) -> Markup:
     )
     rows = Markup("").join(_row(i, point) for i, point in enumerate(points))
     return Markup(
-        "<table><caption>Kept operating points</caption><thead><tr>{}</tr></thead>"
-        "<tbody>{}</tbody></table><p>{}</p>"
+        "<table><caption>Kept operating points <small>lowest FDP at the TPP; beside it the "
+        "limits of every penalty there</small></caption><thead><tr>{}</tr></thead><tbody>{}"
+        '</tbody></table><p class="files">{}</p>'
     ).format(heads, rows, files)
 
 
 def _row(index: int, point: Point) -> Markup:
-    study, limits = point.study, point.limits
-    numbers = [
-        count(study.runs),
-        count(study.candidates),
-        count(study.actives),
-        ratio(study.sampling_ratio),
-        ratio(study.sparsity),
-        typed(point.tpp),
-        computed(point.fdp),
-        *(computed(limits[key]) for key in limits_shown()),
-    ]
-    return Markup("<tr>{}</tr>").format(numbers)
+    study, penalty, facts = point.study, point.penalty, point.data["witness"]
+    numbers = [count(study.runs), count(study.candidates), count(study.actives)]
+    numbers += [ratio(study.sampling_ratio), ratio(study.sparsity)]
+    limits = [computed(point.limit(key)) for key in (*LIMIT_KEYS, "power_limit")]
+    return Markup(
+        '<tr><td><span class="letter">{letter}</span></td><td class="words">{name}</td>'
+        '<td class="words">{title}</td>{numbers}<td class="words"><i class="sample {key}"></i> '
+        "{label}</td><td>{tpp}</td><td><b>{fdp}</b></td>{limits}<td>{threshold}</td>"
+        '<td class="words">{attained}</td><td><button class="cross" data-do="remove" '
+        'data-index="{index}" data-key="remove-row-{index}" aria-label="Remove {letter}">×'
+        "</button></td></tr>"
+    ).format(
+        letter=point_letter(index),
+        name=point.name,
+        title=study.title,
+        numbers=_cells(numbers),
+        key=penalty,
+        label=FAMILIES[penalty].label,
+        tpp=typed(point.tpp),
+        fdp=computed(point.fdp),
+        limits=_cells(limits),
+        threshold=significant(point.data["strength"]["zero_threshold"]),
+        attained="yes" if facts["attained"] else f"approached: {facts['reason']}",
+        index=index,
+    )
+
+
+def _cells(texts: list[str]) -> Markup:
+    return Markup("").join(Markup("<td>{}</td>").format(text) for text in texts)
