@@ -38,17 +38,28 @@ export function render({model, el}) {
     target.value = ""
   }
 
-  // Python can ask for a file to be saved, or a text to be copied.
-  model.on("msg:custom", (event) => {
-    const order = event.data ?? event
-    if (order.save) {
-      const blob = new Blob([order.text], {type: "application/json"})
+  // What Python can ask of the browser beside showing HTML.
+  const orders = {
+    save({name, text}) {
+      const blob = new Blob([text], {type: "application/json"})
       const link = document.createElement("a")
       link.href = URL.createObjectURL(blob)
-      link.download = order.save
+      link.download = name
       link.click()
       setTimeout(() => URL.revokeObjectURL(link.href), 10000)
-    }
+    },
+    theme({name}) {
+      document.documentElement.dataset.theme = name
+    },
+    count({kept}) {
+      const badge = document.querySelector("#tab-shortlist b")
+      badge.textContent = kept
+      badge.hidden = kept === 0
+    },
+  }
+  model.on("msg:custom", (event) => {
+    const order = event.data ?? event
+    orders[order.order](order)
   })
   model.on("html", paint)
   paint()

@@ -34,9 +34,9 @@ class Sheet(pn.custom.JSComponent):
         super().__init__(kind=kind, **params)
         self._on_use = on_use
 
-    def save(self, name: str, text: str) -> None:
-        """Hand the browser a file to save."""
-        self._send_msg({"save": name, "text": text})
+    def ask(self, order: str, **details: Any) -> None:
+        """Ask the browser for something: 'save' a file, turn the 'theme', show the 'count'."""
+        self._send_msg({"order": order, **details})
 
     def _handle_msg(self, data: dict[str, Any]) -> None:
         if self._on_use is not None:

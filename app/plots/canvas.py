@@ -123,7 +123,8 @@ class Canvas:
     def _style_axes(self, x_ticks: list[float] | None, y_ticks: list[float] | None) -> None:
         fig = self.figure
         fig.outline_line_color = None
-        self.token(fig, background_fill_color="surface", border_fill_color="surface")
+        fig.background_fill_color = None  # the card shows through
+        fig.border_fill_color = None
         for axis, ticks in ((fig.xaxis, x_ticks), (fig.yaxis, y_ticks)):
             if ticks is not None:
                 axis.ticker = FixedTicker(ticks=ticks)

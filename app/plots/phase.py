@@ -23,7 +23,7 @@ class PhasePlane:
 
     def __init__(self) -> None:
         self.canvas = Canvas(
-            "phase",
+            "phase-plane",
             (0.0, _RATIO_STRETCHES[0]),
             (0.0, _SPARSITY_STRETCHES[2]),
             "Sampling ratio, runs per candidate",

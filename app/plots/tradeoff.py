@@ -3,11 +3,12 @@
 from typing import Any
 
 import numpy as np
+from bokeh.core.properties import value
 from bokeh.models import ColumnDataSource
 
 from app.plots.canvas import Canvas, put
 from app.reach import Curves, Reach
-from app.theme import STROKES, Theme
+from app.theme import CANVAS_FONT, STROKES, Theme
 from app.words import computed
 
 __all__ = ["TradeoffPlane"]
@@ -21,7 +22,7 @@ class TradeoffPlane:
 
     def __init__(self) -> None:
         self.canvas = Canvas(
-            "tradeoff",
+            "tradeoff-plane",
             (0.0, 1.0),
             (0.0, 1.0),
             "TPP, share of the actives that is found",
@@ -36,7 +37,9 @@ class TradeoffPlane:
         self.limit = ColumnDataSource({"x": [], "y": []})
         self.notes = ColumnDataSource(_notes([]))
         self.target = ColumnDataSource({"x": [], "y": []}, name="target")
-        self.kept = ColumnDataSource({"x": [], "y": [], "text": [], "y_target": []})
+        self.kept = ColumnDataSource(
+            {"x": [], "y": [], "text": [], "y_target": [], "dx": []}, name="kept"
+        )
         self._draw()
 
     @property
@@ -80,8 +83,16 @@ class TradeoffPlane:
 
     def show_kept(self, kept: list[tuple[str, float, float, float]]) -> None:
         """Mark the kept points (letter, TPP, FDP, FDP of the target they stand for)."""
-        letters, tpp, fdp, aimed = zip(*kept, strict=True) if kept else ((), (), (), ())
-        put(self.kept, {"text": letters, "x": tpp, "y": fdp, "y_target": aimed})
+        put(
+            self.kept,
+            {
+                "text": [letter for letter, *_ in kept],
+                "x": [tpp for _, tpp, _, _ in kept],
+                "y": [fdp for _, _, fdp, _ in kept],
+                "y_target": [aimed for *_, aimed in kept],
+                "dx": _apart(kept),
+            },
+        )
 
     def clear(self) -> None:
         """Show axes only."""
@@ -121,14 +132,28 @@ class TradeoffPlane:
         canvas.token(limit.glyph, line_color="power_limit")
         canvas.words(self.notes)
         stem = fig.segment("x", "y", "x", "y_target", source=self.kept, line_width=1.6)
-        disc = fig.scatter("x", "y", source=self.kept, size=19, line_width=2)
-        letter = fig.text(
-            "x", "y", text="text", source=self.kept, text_align="center",
-            text_baseline="middle", text_font_size="11px", text_font_style="bold",
-        )  # fmt: skip
+        disc = fig.text(
+            "x",
+            "y",
+            text="text",
+            x_offset="dx",
+            source=self.kept,
+            text_align="center",
+            text_baseline="middle",
+            text_font=value(CANVAS_FONT),
+            text_font_size="11px",
+            text_font_style="bold",
+            padding=4,
+            border_radius=10,
+            border_line_width=2,
+        )
         canvas.token(stem.glyph, line_color="ink")
-        canvas.token(disc.glyph, fill_color="surface", line_color="ink")
-        canvas.token(letter.glyph, text_color="ink")
+        canvas.token(
+            disc.glyph,
+            text_color="ink",
+            background_fill_color="surface",
+            border_line_color="ink",
+        )
         canvas.handle(self.target)
 
 
@@ -139,6 +164,19 @@ def _notes(notes: list[_Note]) -> dict[str, list[Any]]:
     columns = ("x", "y", "text", "dx", "dy", "align")
     values = zip(*notes, strict=True) if notes else [()] * len(columns)
     return dict(zip(columns, map(list, values), strict=True))
+
+
+def _apart(kept: list[tuple[str, float, float, float]]) -> list[float]:
+    """Shift marks that would cover an earlier one to its right, by a mark's width each."""
+    shifts: list[float] = []
+    for i, (_, tpp, fdp, _) in enumerate(kept):
+        near = [
+            shifts[j]
+            for j, (_, u, q, _) in enumerate(kept[:i])
+            if abs(u - tpp) < 0.03 and abs(q - fdp) < 0.04
+        ]
+        shifts.append(max(near) + 22.0 if near else 0.0)
+    return shifts
 
 
 def _limit_notes(reach: Reach) -> list[_Note]:

@@ -72,6 +72,7 @@ class _Frame:
         self.title = Sheet("title", self._use)
         self.actions = Sheet("actions", self._use)
         session.param.watch(self._show, ["title", "theme"])
+        session.param.watch(self._turn, ["theme"])
         self._show()
 
     def roots(self) -> dict[str, Any]:
@@ -88,6 +89,9 @@ class _Frame:
                 session.turn_theme()
             case "example":
                 session.open_example()
+
+    def _turn(self, *_: Any) -> None:
+        self.actions.ask("theme", name=self._session.theme)
 
     def _show(self, *_: Any) -> None:
         session = self._session

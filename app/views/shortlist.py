@@ -34,7 +34,7 @@ class ShortlistView:
             case "remove":
                 session.remove(int(data["index"]))
             case "export":
-                self.strip.save("shortlist.json", session.exported())
+                self.strip.ask("save", name="shortlist.json", text=session.exported())
             case "import":
                 session.import_points(data)
 
@@ -47,6 +47,7 @@ class ShortlistView:
             chips or empty, files
         )
         self.table.html = _table(points, files)
+        self.strip.ask("count", kept=len(points))
 
 
 def _chip(index: int, point: Point) -> Markup:
@@ -75,11 +76,10 @@ def _files(some: bool) -> Markup:
 
 
 _COLUMNS = (
-    ("", "words"), ("Name", "words"), ("Study", "words"), ("Runs", ""), ("Candidates", ""),
-    ("Actives", ""), ("Sampling ratio", ""), ("Sparsity", ""), ("Penalty", "words"),
-    ("TPP", ""), ("FDP", ""), ("Lasso", "group"), ("Closed form", "group"),
-    ("Two-level", "group"), ("Sorted L1", "group"), ("Power limit", "group"),
-    ("Zero threshold, τ", ""), ("Attained", "words"), ("", ""),
+    ("", "words"), ("Name and study", "words"), ("Runs", ""), ("Candidates", ""),
+    ("Actives", ""), ("Ratio", ""), ("Sparsity", ""), ("Penalty", "words"), ("TPP", ""),
+    ("FDP", ""), ("lasso", ""), ("closed form", ""), ("two-level", ""), ("sorted L1", ""),
+    ("Power limit", ""), ("Zero threshold", ""), ("Attained", "words"),
 )  # fmt: skip
 
 
@@ -95,8 +95,8 @@ def _table(points: tuple[Point, ...], files: Markup) -> Markup:
     )
     rows = Markup("").join(_row(i, point) for i, point in enumerate(points))
     return Markup(
-        "<table><caption>Kept operating points <small>lowest FDP at the TPP; beside it the "
-        "limits of every penalty there</small></caption><thead><tr>{}</tr></thead><tbody>{}"
+        "<table><caption>Kept operating points <small>FDP: the lowest at that TPP for the penalty "
+        "kept; then that of every penalty; zero threshold in units of τ</small></caption><thead><tr>{}</tr></thead><tbody>{}"
         '</tbody></table><p class="files">{}</p>'
     ).format(heads, rows, files)
 
@@ -107,12 +107,13 @@ def _row(index: int, point: Point) -> Markup:
     numbers += [ratio(study.sampling_ratio), ratio(study.sparsity)]
     limits = [computed(point.limit(key)) for key in (*LIMIT_KEYS, "power_limit")]
     return Markup(
-        '<tr><td><span class="letter">{letter}</span></td><td class="words">{name}</td>'
-        '<td class="words">{title}</td>{numbers}<td class="words"><i class="sample {key}"></i> '
-        "{label}</td><td>{tpp}</td><td><b>{fdp}</b></td>{limits}<td>{threshold}</td>"
-        '<td class="words">{attained}</td><td><button class="cross" data-do="remove" '
-        'data-index="{index}" data-key="remove-row-{index}" aria-label="Remove {letter}">×'
-        "</button></td></tr>"
+        '<tr><td class="words"><span class="letter">{letter}</span>'
+        '<button class="cross" data-do="remove" data-index="{index}" '
+        'data-key="remove-row-{index}" aria-label="Remove {letter}">×</button></td>'
+        '<td class="words name"><b>{name}</b><small>{title}</small></td>{numbers}'
+        '<td class="words"><i class="sample {key}"></i>{label}</td><td>{tpp}</td>'
+        "<td><b>{fdp}</b></td>{limits}<td>{threshold}</td>"
+        '<td class="words why">{attained}</td></tr>'
     ).format(
         letter=point_letter(index),
         name=point.name,

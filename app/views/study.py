@@ -115,7 +115,8 @@ def _penalty(session: Session, key: str) -> Markup:
     label = FAMILIES[key].label
     return Markup(
         '<div class="penalty"><label>'
-        '<input type="checkbox" data-do="show" data-penalty="{key}" data-key="show-{key}" {checked}>'
+        '<input type="checkbox" data-do="show" data-penalty="{key}" '
+        'data-key="show-{key}" {checked}>'
         '<i class="sample {key}"></i>{label}</label>'
         '<button class="hatch {key}" data-do="choose" data-penalty="{key}" '
         'data-key="hatch-{key}" aria-pressed="{chosen}" '
