@@ -29,7 +29,7 @@ from engine.normal import Array
 __all__ = ["Shrinkage", "least_risk"]
 
 # The integrand has a jump in its second derivative where a pooled stretch ends, so the error
-# falls with the cube of the spacing whatever the rule, and even spacing keeps it smallest: it is
+# falls with the cube of the spacing whatever the rule, and even spacing keeps it smallest:
 # about 1e-7, or 1e-7 of the risk in sparse studies, whose steepest boundaries turn that into
 # 3e-6 of FDP.
 _STEP = 0.0125

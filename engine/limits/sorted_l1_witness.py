@@ -91,9 +91,7 @@ def _finite_penalty(optimum: Optimum, eps: float) -> _Penalty:
         rank += mass * selection(np.full_like(x, size), x)
 
     def profile(shares: Array) -> Array:
-        inside = np.interp(shares, rank[::-1], withheld[::-1])
-        # A pooled stretch may start at the threshold, where the weights then jump down to it.
-        return np.where(shares < rank[0], inside, best.threshold)
+        return np.interp(shares, rank[::-1], withheld[::-1])  # the threshold, past rank[0]
 
     just_past = optimum.threshold + _PAST
     smallest = just_past - float(np.interp(just_past, x, withheld))
