@@ -51,7 +51,7 @@ def sorted_l1_witness(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Witness:
     >>> round(witness.fdp, 4), round(witness.law.sizes[0], 2)
     (0.7111, 1.47)
     >>> witness.normalised_weights(5).round(2).tolist()
-    [1.79, 1.11, 0.62, 0.62, 0.62]
+    [1.33, 0.93, 0.69, 0.69, 0.69]
     """
     u = TPP.check(tpp)
     delta = SAMPLING_RATIO.check(sampling_ratio)
