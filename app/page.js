@@ -54,3 +54,11 @@ document.addEventListener("keydown", (event) => {
 
 const lost = document.querySelector(".lost")
 lost.querySelector("button").addEventListener("click", () => location.reload())
+
+const watching = setInterval(() => {
+  const doc = window.Bokeh?.documents?.[0]
+  if (!doc) return
+  clearInterval(watching)
+  doc.on_event("connection_lost", () => { lost.hidden = false })
+  doc.on_event("client_reconnected", () => { lost.hidden = true })
+}, 100)

@@ -5,6 +5,7 @@ checked as a whole before any of it is taken; a bad one leaves everything as it 
 `problem`.
 """
 
+import base64
 import dataclasses
 import math
 from importlib import resources
@@ -65,7 +66,7 @@ class Session(param.Parameterized):
     fdp = param.Number(default=0.2)
 
     keeps_counts = param.Boolean(default=True, doc="What new candidates leave as it is.")
-    shown = param.Tuple(default=tuple(FAMILIES))
+    shown = param.Parameter(default=tuple(FAMILIES), doc="Penalties whose curves are drawn.")
     chosen = param.String(default="lasso", doc="The penalty hatched, and kept.")
     theme = param.String(default="light")
 
@@ -288,13 +289,12 @@ def asset(name: str) -> bytes:
     return resources.files("app.assets").joinpath(name).read_bytes()
 
 
-def _uploaded(upload: dict[str, Any], limit: int, what: str) -> str:
-    """The text of an upload; one that the browser found too large arrives without it."""
+def _uploaded(upload: dict[str, Any], limit: int, what: str) -> bytes:
+    """The bytes of an upload; one that the browser found too large arrives without them."""
     if upload["size"] > limit:
-        raise ValueError(
-            f"{what} must be at most {limit / 1e6:.0f} MB, not {upload['size'] / 1e6:.3g} MB"
-        )
-    return str(upload["text"])
+        most, size = f"{limit / 1e6:.0f} MB", f"{upload['size'] / 1e6:.3g} MB"
+        raise ValueError(f"{what} must be at most {most}, not {size}")
+    return base64.b64decode(upload["content"])
 
 
 def _number(name: str, value: Any) -> float:

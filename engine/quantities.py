@@ -153,7 +153,7 @@ def shown(value: Any) -> str:
 
 
 def _plain(end: float) -> float | int:
-    return int(end) if end.is_integer() else end
+    return int(end) if float(end).is_integer() else end
 
 
 _MOST = 1e9  # counts beyond this are typing errors

@@ -144,7 +144,7 @@ export function render({model, el}) {
   model.on("low", paint)
   model.on("high", paint)
   model.on("accepted", refresh)
-  model.on("error", complain)
+  model.on(["error", "error_field"], complain)
   el.appendChild(root)
   paint()
   complain()

@@ -31,12 +31,17 @@ export function render({model, el}) {
   const read = async (target) => {
     const file = target.files[0]
     if (!file) return
-    const limit = Number(target.dataset.limit)
-    const fits = file.size <= limit
-    const text = fits ? await file.text() : ""
-    speak(target, {name: file.name, size: file.size, text})
+    const fits = file.size <= Number(target.dataset.limit)
+    speak(target, {name: file.name, size: file.size, content: fits ? await base64(file) : ""})
     target.value = ""
   }
+
+  const base64 = (file) => new Promise((resolve, reject) => {
+    const reader = new FileReader()
+    reader.onload = () => resolve(reader.result.split(",")[1] ?? "")
+    reader.onerror = () => reject(reader.error)
+    reader.readAsDataURL(file)
+  })
 
   // What Python can ask of the browser beside showing HTML.
   const orders = {
@@ -50,6 +55,9 @@ export function render({model, el}) {
     },
     theme({name}) {
       document.documentElement.dataset.theme = name
+    },
+    dim({on}) {
+      document.querySelector(".planes").classList.toggle("wrong", on)
     },
     count({kept}) {
       const badge = document.querySelector("#tab-shortlist b")

@@ -35,7 +35,7 @@ class Sheet(pn.custom.JSComponent):
         self._on_use = on_use
 
     def ask(self, order: str, **details: Any) -> None:
-        """Ask the browser for something: 'save' a file, turn the 'theme', show the 'count'."""
+        """Ask the browser for one of the orders in sheet.js."""
         self._send_msg({"order": order, **details})
 
     def _handle_msg(self, data: dict[str, Any]) -> None:

@@ -3,7 +3,9 @@
 __all__ = ["SHARED"]
 
 SHARED = """
-:host { display: block; width: 100%; color: var(--ink) !important; font: 13px/18px var(--sans); }
+:host {
+  display: block; width: 100%; color: var(--ink) !important; font: 13px/18px var(--sans);
+}
 *, *::before, *::after { box-sizing: border-box; }
 p { margin: 0; }
 button, input, select, textarea { font: inherit; color: inherit; }

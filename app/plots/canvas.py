@@ -129,6 +129,8 @@ class Canvas:
             if ticks is not None:
                 axis.ticker = FixedTicker(ticks=ticks)
                 axis.formatter = NumeralTickFormatter(format="0.0")
+            else:
+                axis.ticker.desired_num_ticks = 5
             axis.major_tick_line_color = None
             axis.minor_tick_line_color = None
             axis.major_label_text_font_size = "12px"

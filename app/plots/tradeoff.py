@@ -186,12 +186,12 @@ def _limit_notes(reach: Reach) -> list[_Note]:
     here, there = f"power limit {computed(limit)}", "no lasso beyond"
     # The words change sides before the right edge would cut them, and the left one too.
     if limit > 0.75:
-        return [(limit, 1.0, here, -8.0, 18.0, "right")]
+        return [(limit, 1.0, here, -8.0, 14.0, "right")]
     if limit < 0.25:
-        return [(limit, 1.0, f"{here}, {there}", 8.0, 18.0, "left")]
+        return [(limit, 1.0, f"{here}, {there}", 8.0, 14.0, "left")]
     return [
-        (limit, 1.0, here, -8.0, 18.0, "right"),
-        (limit, 1.0, there, 8.0, 18.0, "left"),
+        (limit, 1.0, here, -8.0, 14.0, "right"),
+        (limit, 1.0, there, 8.0, 14.0, "left"),
     ]
 
 

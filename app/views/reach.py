@@ -39,6 +39,7 @@ class ReachView:
         watch(self._show_ends, ["reach", "shown"])
         watch(self._show_kept, ["points", "curves"])
         watch(self._show_keep, ["reach", "chosen", "notice", "problem", "points"])
+        watch(self._dim, ["problem"])
         watch(self._repaint, ["theme"])
         self._repaint()
         self._show_curves()
@@ -83,6 +84,10 @@ class ReachView:
             self.tradeoff.show_reach(session.reach)
             self.phase.show_reach(session.reach)
         self.verdict.html = _verdict_html(session)
+
+    def _dim(self, *_: Any) -> None:
+        """Show that the pictures stand for the last good study, not for what was typed."""
+        self.verdict.ask("dim", on=self._session.problem is not None)
 
     def _show_ends(self, *_: Any) -> None:
         session = self._session

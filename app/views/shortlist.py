@@ -95,9 +95,10 @@ def _table(points: tuple[Point, ...], files: Markup) -> Markup:
     )
     rows = Markup("").join(_row(i, point) for i, point in enumerate(points))
     return Markup(
-        "<table><caption>Kept operating points <small>FDP: the lowest at that TPP for the penalty "
-        "kept; then that of every penalty; zero threshold in units of τ</small></caption><thead><tr>{}</tr></thead><tbody>{}"
-        '</tbody></table><p class="files">{}</p>'
+        "<table><caption>Kept operating points <small>FDP: the lowest at that TPP for the "
+        "penalty kept; then that of every penalty; zero threshold in units of τ</small>"
+        "</caption>"
+        '<thead><tr>{}</tr></thead><tbody>{}</tbody></table><p class="files">{}</p>'
     ).format(heads, rows, files)
 
 

@@ -1,0 +1,83 @@
+"""What the browser tests share: starting the command, and reading the page."""
+
+import os
+import socket
+import subprocess
+import sys
+import time
+import urllib.request
+from pathlib import Path
+
+from playwright.sync_api import Page
+
+ROOT = Path(__file__).parents[2]
+DEMO = ROOT / "assets" / "demo-study.json"
+
+CHROMIUM_FLAGS = [
+    "--no-sandbox",
+    "--disable-gpu",
+    "--disable-quic",
+    "--no-first-run",
+    "--disable-background-networking",
+    "--disable-component-update",
+    "--disable-sync",
+]
+
+
+def free_port() -> int:
+    with socket.socket() as probe:
+        probe.bind(("127.0.0.1", 0))
+        return int(probe.getsockname()[1])
+
+
+def start(*arguments: str) -> tuple[subprocess.Popen[bytes], str]:
+    """Start the command on a free port and wait until it answers."""
+    port = free_port()
+    server = subprocess.Popen(
+        [sys.executable, "-m", "app.cli", *arguments, "--port", str(port), "--no-browser"],
+        cwd=ROOT,
+        env={**os.environ, "OMP_NUM_THREADS": "1"},
+    )
+    url = f"http://127.0.0.1:{port}/"
+    for _ in range(300):
+        try:
+            urllib.request.urlopen(url + "liveness", timeout=1).close()
+            return server, url
+        except OSError:
+            assert server.poll() is None, "the server ended while starting"
+            time.sleep(0.1)
+    raise AssertionError("the server does not answer")
+
+
+def settle(page: Page) -> None:
+    """Wait until the document is idle and has been answered."""
+    page.wait_for_function(
+        "window.Bokeh && Bokeh.documents.length && Bokeh.documents[0].is_idle", timeout=20_000
+    )
+    page.locator(".sheet.verdict p").first.wait_for()
+
+
+def wait_exact(page: Page) -> None:
+    """Wait until exact values stand in the words and in the curves."""
+    page.locator(".sheet.keep .state, .sheet.keep .notice").first.wait_for()
+    page.wait_for_function(
+        """() => {
+          const source = Bokeh.documents[0].get_model_by_name("tradeoff-curves")
+          const deep = (root) => [...root.querySelectorAll("*")].flatMap(
+            (e) => [e, ...(e.shadowRoot ? deep(e.shadowRoot) : [])])
+          const pending = deep(document).some((e) => e.classList.contains("pending"))
+          return !pending && [...source.data["sorted-l1"]].some(Number.isFinite)
+        }""",
+        timeout=20_000,
+    )
+
+
+def data(page: Page, name: str) -> dict[str, list[float]]:
+    """Return the columns of a source in the browser."""
+    return page.evaluate(
+        """(name) => {
+          const source = Bokeh.documents[0].get_model_by_name(name)
+          return Object.fromEntries(Object.entries(source.data).map(([k, v]) => [k, [...v]]))
+        }""",
+        name,
+    )
