@@ -14,11 +14,10 @@ from typing import Any
 
 from bokeh.document import Document
 
-from app.reach import Curves, Reach, exact
+from app.reach import Curves, Reach, Target, exact
 
 __all__ = ["Evaluate", "evaluator", "start_workers"]
 
-Target = tuple[int, int, int, float, float]
 Done = Callable[[Reach, Curves], None]
 Evaluate = Callable[[Target, Done], None]
 
@@ -39,7 +38,7 @@ def evaluator(doc: Document) -> Evaluate:
 
         def start() -> None:
             if latest[0] is ticket:
-                submit(exact, *target).add_done_callback(finish)
+                submit(exact, target).add_done_callback(finish)
 
         def finish(future: Future[tuple[Reach, Curves]]) -> None:
             if not future.cancelled() and future.exception() is None:
@@ -58,7 +57,7 @@ def evaluator(doc: Document) -> Evaluate:
 def start_workers() -> ProcessPoolExecutor:
     """Start the worker process, which imports `app.reach` and the engine but no pictures."""
     pool = ProcessPoolExecutor(1, mp_context=multiprocessing.get_context("spawn"))
-    pool.submit(exact, 30, 100, 20, 0.5, 0.5)  # the first answer pays for the imports
+    pool.submit(exact, (30, 100, 20, 0.5, 0.5))  # the first answer pays for the imports
     atexit.register(pool.shutdown, cancel_futures=True)
     return pool
 

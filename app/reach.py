@@ -3,14 +3,12 @@
 import math
 from dataclasses import dataclass, replace
 from functools import lru_cache
-from typing import Any
 
 import numpy as np
 
 from engine import (
     critical_sparsity,
     power_limit,
-    two_level_closed_form,
 )
 from engine.limits.families import FAMILIES
 from engine.limits.lasso_curve import lasso_curve
@@ -21,19 +19,22 @@ __all__ = [
     "SEARCHED",
     "Curves",
     "Reach",
+    "Target",
     "exact",
     "exact_curves",
     "exact_reach",
-    "read_off",
     "swift_curves",
     "swift_reach",
 ]
+
+# Runs, candidates, actives, and the target's TPP and FDP.
+Target = tuple[int, int, int, float, float]
 
 # The penalties whose boundary is found by a search, too slow to follow the hand.
 SEARCHED = ("two-level", "sorted-l1")
 
 # Nodes in TPP below and above the power limit. The exact boundaries are evaluated on every
-# second one: at the size of the plane the chords stray by less than half a pixel.
+# second one: at the size of the plane the chords stray by less than a pixel.
 _BELOW, _ABOVE = 64, 32
 
 
@@ -60,8 +61,9 @@ class Curves:
 class Reach:
     """The limits of one study, and of one target on it.
 
-    `lowest` is the FDP by penalty at the target's TPP: nan where the penalty has no point, or
-    while `exact` is False and the penalty is one of `SEARCHED`. `ends` is the same at TPP 1.
+    `lowest` is the FDP by penalty at the target's TPP, `ends` at TPP 1: nan where the penalty
+    has no point, or is one of `SEARCHED` and not known yet. Until `exact` they are read off
+    curves.
     """
 
     runs: int
@@ -95,22 +97,29 @@ class Reach:
         """FDP of a list picked at random."""
         return 1.0 - self.sparsity
 
+    def is_open(self, penalty: str) -> bool:
+        """Whether nothing is known of the penalty yet."""
+        return not self.exact and penalty in SEARCHED and math.isnan(self.lowest[penalty])
+
     def reaches(self, penalty: str) -> bool:
         """Whether some signal lets the penalty meet the target."""
         return bool(self.lowest[penalty] <= self.fdp)
 
 
-def swift_reach(runs: int, candidates: int, actives: int, tpp: float, fdp: float) -> Reach:
-    """Evaluate the limits that need no search; those of `SEARCHED` stay open."""
+def swift_reach(target: Target, curves: Curves | None = None) -> Reach:
+    """Read the limits at a target off curves, to about 0.002.
+
+    Those of `SEARCHED` stay open without exact curves of the same study.
+    """
+    runs, candidates, actives, tpp, fdp = target
     delta, eps = runs / candidates, actives / candidates
+    if curves is None:
+        curves = swift_curves(delta, eps)
     limit = power_limit(delta, eps)
-    both = two_level_closed_form([tpp, 1.0], delta, eps).tolist()
-    # Below its limit the lasso is the closed form; at a limit below 1 it ends.
-    lasso = [
-        q if limit == 1.0 or u < limit else math.nan
-        for u, q in zip((tpp, 1.0), both, strict=True)
-    ]
-    open_ = dict.fromkeys(SEARCHED, math.nan)
+    lowest = {key: float(np.interp(tpp, curves.tpp, fdp)) for key, fdp in curves.fdp.items()}
+    ends = {key: float(fdp[-1]) for key, fdp in curves.fdp.items()}
+    if limit <= tpp < 1.0 or limit < 1.0 == tpp:
+        lowest["lasso"] = math.nan
     return Reach(
         runs=runs,
         candidates=candidates,
@@ -119,39 +128,30 @@ def swift_reach(runs: int, candidates: int, actives: int, tpp: float, fdp: float
         fdp=fdp,
         critical_sparsity=critical_sparsity(delta),
         power_limit=limit,
-        lowest={"lasso": lasso[0], "two-level-closed-form": both[0], **open_},
-        ends={"lasso": lasso[1], "two-level-closed-form": both[1], **open_},
+        lowest=lowest,
+        ends=ends,
         exact=False,
     )
 
 
-def read_off(reach: Reach, curves: Curves) -> Reach:
-    """Fill the open values of `reach` from exact curves of the same study, to about 0.002."""
-    lowest, ends = dict(reach.lowest), dict(reach.ends)
-    for key in SEARCHED:
-        lowest[key] = float(np.interp(reach.tpp, curves.tpp, curves.fdp[key]))
-        ends[key] = float(curves.fdp[key][-1])
-    return replace(reach, lowest=lowest, ends=ends)
-
-
-def exact_reach(runs: int, candidates: int, actives: int, tpp: float, fdp: float) -> Reach:
-    """Evaluate every limit at the target."""
-    swift = swift_reach(runs, candidates, actives, tpp, fdp)
-    found = {
-        key: FAMILIES[key].boundary([tpp, 1.0], swift.sampling_ratio, swift.sparsity).tolist()
-        for key in SEARCHED
+def exact_reach(target: Target) -> Reach:
+    """Evaluate every limit at a target."""
+    swift = swift_reach(target)
+    at_both = {
+        key: family.boundary([swift.tpp, 1.0], *swift.study_ratios).tolist()
+        for key, family in FAMILIES.items()
     }
     return replace(
         swift,
-        lowest={**swift.lowest, **{key: both[0] for key, both in found.items()}},
-        ends={**swift.ends, **{key: both[1] for key, both in found.items()}},
+        lowest={key: both[0] for key, both in at_both.items()},
+        ends={key: both[1] for key, both in at_both.items()},
         exact=True,
     )
 
 
-def exact(*target: Any) -> tuple[Reach, Curves]:
+def exact(target: Target) -> tuple[Reach, Curves]:
     """Evaluate the limits at a target and along TPP; this is what workers run."""
-    reach = exact_reach(*target)
+    reach = exact_reach(target)
     return reach, exact_curves(*reach.study_ratios)
 
 

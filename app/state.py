@@ -14,7 +14,7 @@ from typing import Any
 import param
 
 from app.evaluation import Evaluate
-from app.reach import Curves, Reach, read_off, swift_curves, swift_reach
+from app.reach import Curves, Reach, Target, swift_curves, swift_reach
 from app.words import computed, typed
 from engine.files import SHORTLIST_BYTES, STUDY_BYTES
 from engine.limits.families import FAMILIES
@@ -24,10 +24,10 @@ from engine.study import (
     TITLE_LENGTH,
     Effect,
     Study,
-    Target,
     check_actives,
     load_study,
 )
+from engine.study import Target as StudyTarget
 
 __all__ = ["Problem", "Session", "point_letter"]
 
@@ -112,7 +112,7 @@ class Session(param.Parameterized):
         counts = {name: getattr(self, name) for name in _COUNTS}
         if None in counts.values():
             return None
-        target = Target(tpp=self.tpp, fdp=self.fdp)
+        target = StudyTarget(tpp=self.tpp, fdp=self.fdp)
         return Study(title=self.title, **counts, **self._belief, target=target)
 
     def open_example(self) -> None:
@@ -252,20 +252,21 @@ class Session(param.Parameterized):
             name: values.get(name, getattr(self, name)) for name in (*_COUNTS, "tpp", "fdp")
         }
         changes: dict[str, Any] = {"problem": None, "notice": ""}
-        if None not in after.values():
-            changes |= self._answer(swift_reach(**after))
-            self._evaluate(tuple(after.values()), self._refine)
+        target: Target | None = None if None in after.values() else tuple(after.values())
+        if target is not None:
+            changes |= self._answer(target)
         self.param.update(**values, **changes, accepted=self.accepted + 1)
+        if target is not None:
+            self._evaluate(target, self._refine)
 
-    def _answer(self, swift: Reach) -> dict[str, Any]:
-        """Return what can be shown at once: open values, or read off the curves that stand."""
-        old = self.reach
-        same = old is not None and old.study_ratios == swift.study_ratios
-        if same and self.curves.exact:
-            return {"reach": read_off(swift, self.curves)}
-        if same:
-            return {"reach": swift}
-        return {"reach": swift, "curves": swift_curves(*swift.study_ratios)}
+    def _answer(self, target: Target) -> dict[str, Any]:
+        """Return what can be shown at once: curves without a search, and what they tell."""
+        runs, candidates, actives = target[:3]
+        ratios = (runs / candidates, actives / candidates)
+        if self.reach is not None and self.reach.study_ratios == ratios:
+            return {"reach": swift_reach(target, self.curves)}
+        curves = swift_curves(*ratios)
+        return {"reach": swift_reach(target, curves), "curves": curves}
 
     def _set_points(self, points: tuple[Point, ...], notice: str) -> None:
         self._before = self.points

@@ -1,9 +1,8 @@
 """The verdict: a sentence, with numbers, that answers what the trade-off plane shows."""
 
-import math
 from dataclasses import dataclass
 
-from app.reach import SEARCHED, Reach
+from app.reach import Reach
 from app.words import computed, count, typed
 
 __all__ = ["Piece", "plain", "verdict"]
@@ -99,12 +98,12 @@ def _why_not_lasso(reach: Reach) -> list[Piece]:
 
 
 def _open(reach: Reach) -> bool:
-    return any(math.isnan(reach.lowest[key]) for key in SEARCHED)
+    return any(reach.is_open(penalty) for penalty in reach.lowest)
 
 
 def _value(reach: Reach, penalty: str) -> list[Piece]:
     """The lowest FDP: three digits, or two and a grey box while it is read off a curve."""
     value = reach.lowest[penalty]
-    if reach.exact or penalty not in SEARCHED:
+    if reach.exact:
         return [Piece(computed(value))]
     return [Piece(computed(value, 2)), Piece("", "pending")]

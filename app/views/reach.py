@@ -10,11 +10,11 @@ from app.components.ends import Ends
 from app.components.sheet import Sheet
 from app.plots.phase import PhasePlane
 from app.plots.tradeoff import TradeoffPlane
-from app.reach import SEARCHED, Reach
+from app.reach import Reach
 from app.state import Session
 from app.theme import THEMES
 from app.verdict import Piece, verdict
-from app.words import computed, count, typed
+from app.words import NONE, computed, count, typed
 from engine.limits.families import FAMILIES
 
 __all__ = ["ReachView"]
@@ -120,7 +120,7 @@ def _rows(reach: Reach, shown: tuple[str, ...]) -> list[dict[str, Any]]:
             "key": key,
             "name": _SHORT.get(key, FAMILIES[key].label),
             "value": _shown_value(reach, key),
-            "pending": not reach.exact and key in SEARCHED,
+            "pending": not reach.exact and _shown_value(reach, key) != NONE,
             "end": _end(reach, key),
         }
         for key in shown
@@ -131,10 +131,9 @@ def _rows(reach: Reach, shown: tuple[str, ...]) -> list[dict[str, Any]]:
 
 
 def _shown_value(reach: Reach, key: str) -> str:
-    value = reach.lowest[key]
-    if reach.exact or key not in SEARCHED:
-        return computed(value)
-    return "" if math.isnan(value) else computed(value, 2)
+    if reach.is_open(key):
+        return ""
+    return computed(reach.lowest[key], 3 if reach.exact else 2)
 
 
 def _end(reach: Reach, key: str) -> float | None:

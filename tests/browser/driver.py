@@ -39,10 +39,16 @@ def start(*arguments: str) -> tuple[subprocess.Popen[bytes], str]:
         env={**os.environ, "OMP_NUM_THREADS": "1"},
     )
     url = f"http://127.0.0.1:{port}/"
+    await_live(server, url)
+    return server, url
+
+
+def await_live(server: subprocess.Popen[bytes], url: str) -> None:
+    """Wait until a server answers."""
     for _ in range(300):
         try:
             urllib.request.urlopen(url + "liveness", timeout=1).close()
-            return server, url
+            return
         except OSError:
             assert server.poll() is None, "the server ended while starting"
             time.sleep(0.1)

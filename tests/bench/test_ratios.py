@@ -1,0 +1,24 @@
+"""The speed ratios are kept. Those of time are taken from the least disturbed calls."""
+
+import pytest
+
+from tests.bench.engine_ratios import engine_ratios
+from tests.bench.latency import latency_ratios
+
+
+@pytest.fixture(scope="module")
+def measured():
+    return engine_ratios()
+
+
+@pytest.mark.parametrize("i", range(5))
+def test_engine_ratios(measured, i):
+    ratio = measured[i]
+    assert ratio.kept, (
+        f"{ratio.what}: {ratio.value:.4g} x {ratio.yardstick}, bound {ratio.bound}"
+    )
+
+
+def test_a_slider_step_takes_little_more_than_a_bare_page():
+    ratios = latency_ratios()
+    assert all(ratio.kept for ratio in ratios), [(r.what, r.value) for r in ratios]
