@@ -55,6 +55,13 @@ def test_examples_run(name):
     assert doctest.testmod(module, optionflags=doctest.NORMALIZE_WHITESPACE).failed == 0
 
 
+def test_the_readme_tells_the_truth():
+    flags = doctest.ELLIPSIS | doctest.NORMALIZE_WHITESPACE
+    done = doctest.testfile(str(ROOT / "README.md"), module_relative=False, optionflags=flags)
+    assert done.attempted > 2
+    assert done.failed == 0
+
+
 @pytest.mark.parametrize("function", PUBLIC, ids=[f.__name__ for f in PUBLIC])
 def test_public_docstrings_are_complete(function):
     name = f"{function.__module__}.{function.__name__}"

@@ -36,6 +36,7 @@ class TradeoffPlane:
         self.rules = ColumnDataSource({"x0": [], "y0": [], "x1": [], "y1": [], "dash": []})
         self.limit = ColumnDataSource({"x": [], "y": []})
         self.notes = ColumnDataSource(_notes([]))
+        self.names = ColumnDataSource(_notes([]))
         self.target = ColumnDataSource({"x": [], "y": []}, name="target")
         self.kept = ColumnDataSource(
             {"x": [], "y": [], "text": [], "y_target": [], "dx": []}, name="kept"
@@ -62,6 +63,8 @@ class TradeoffPlane:
             "hatch": np.where(none, fill, curves.fdp[hatched]),
             **curves.fdp,
         }
+
+        put(self.names, _notes(_lasso_name(curves) if "lasso" in shown else []))
 
     def show_reach(self, reach: Reach) -> None:
         """Draw the target, the power limit and picking at random."""
@@ -96,7 +99,9 @@ class TradeoffPlane:
 
     def clear(self) -> None:
         """Show axes only."""
-        for source in (self.curves, self.rules, self.limit, self.notes, self.target, self.kept):
+        for source in (
+            self.curves, self.rules, self.limit, self.notes, self.names, self.target, self.kept
+        ):  # fmt: skip
             source.data = {name: [] for name in source.data}
 
     def repaint(self, theme: Theme) -> None:
@@ -131,6 +136,7 @@ class TradeoffPlane:
         limit = fig.line("x", "y", source=self.limit, line_width=1.6)
         canvas.token(limit.glyph, line_color="power_limit")
         canvas.words(self.notes)
+        canvas.words(self.names)
         stem = fig.segment("x", "y", "x", "y_target", source=self.kept, line_width=1.6)
         disc = fig.text(
             "x",
@@ -143,7 +149,7 @@ class TradeoffPlane:
             text_font=value(CANVAS_FONT),
             text_font_size="11px",
             text_font_style="bold",
-            padding=4,
+            padding=(6, 4),
             border_radius=10,
             border_line_width=2,
         )
@@ -193,6 +199,16 @@ def _limit_notes(reach: Reach) -> list[_Note]:
         (limit, 1.0, here, -8.0, 14.0, "right"),
         (limit, 1.0, there, 8.0, 14.0, "left"),
     ]
+
+
+def _lasso_name(curves: Curves) -> list[_Note]:
+    """Name the lasso on its curve; the others are named at their ends."""
+    tpp, fdp = curves.tpp, curves.fdp["lasso"]
+    inside = np.flatnonzero(fdp > 0.08)
+    if not len(inside):
+        return []
+    at = inside[len(inside) // 3]
+    return [(float(tpp[at]), float(fdp[at]), "lasso", -14.0, -6.0, "right")]
 
 
 def _random_note(reach: Reach) -> _Note:

@@ -52,7 +52,7 @@ def two_level_witness(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Witness:
     >>> from engine.limits.two_level_witness import two_level_witness
     >>> witness = two_level_witness(0.8, 0.3, 0.2)
     >>> round(witness.fdp, 3), [round(level, 1) for level in witness.levels]
-    (0.719, [1.8, 0.7])
+    (0.719, [1.7, 0.7])
     """
     u, delta, eps = (
         TPP.check(tpp),
