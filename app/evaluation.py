@@ -12,6 +12,7 @@ from concurrent.futures import BrokenExecutor, Future, ProcessPoolExecutor
 from functools import lru_cache, partial
 from typing import Any
 
+import panel as pn
 from bokeh.document import Document
 
 from app.reach import Curves, Reach, Target, exact
@@ -29,28 +30,49 @@ def evaluator(doc: Document) -> Evaluate:
     """Return the function that a session asks for exact values.
 
     It waits until the study and its target have rested for `REST_MS`, evaluates in a worker,
-    and calls `done` on the session's own event loop.
+    and calls `done` on the session's own event loop. Before the page has loaded it only
+    remembers the request: components miss what changes while they are being connected.
     """
-    latest: list[object] = [None]
+    requests = _Requests(doc)
+    pn.state.onload(requests.open)
+    return requests.take
 
-    def evaluate(target: Target, done: Done) -> None:
-        ticket = latest[0] = object()
 
-        def start() -> None:
-            if latest[0] is ticket:
-                submit(exact, target).add_done_callback(finish)
+class _Requests:
+    """The requests of one session; the latest counts."""
 
-        def finish(future: Future[tuple[Reach, Curves]]) -> None:
-            if not future.cancelled() and future.exception() is None:
-                doc.add_next_tick_callback(partial(hand_over, *future.result()))
+    def __init__(self, doc: Document) -> None:
+        self._doc = doc
+        self._loaded = False
+        self._latest: tuple[Target, Done] | None = None
 
-        def hand_over(reach: Reach, curves: Curves) -> None:
-            if latest[0] is ticket:
-                done(reach, curves)
+    def open(self) -> None:
+        """Start what was asked for while the page was loading."""
+        self._loaded = True
+        if self._latest is not None:
+            self._start(self._latest)
 
-        doc.add_timeout_callback(start, REST_MS)
+    def take(self, target: Target, done: Done) -> None:
+        """Evaluate `target` when it has rested."""
+        request = self._latest = (target, done)
+        if self._loaded:
+            self._doc.add_timeout_callback(partial(self._start, request), REST_MS)
 
-    return evaluate
+    def _start(self, request: tuple[Target, Done]) -> None:
+        if request is self._latest:
+            submit(exact, request[0]).add_done_callback(partial(self._finish, request))
+
+    def _finish(
+        self, request: tuple[Target, Done], future: Future[tuple[Reach, Curves]]
+    ) -> None:
+        """Runs in a thread of the pool: only hands over to the session's event loop."""
+        if not future.cancelled() and future.exception() is None:
+            answer = future.result()
+            self._doc.add_next_tick_callback(partial(self._hand_over, request, *answer))
+
+    def _hand_over(self, request: tuple[Target, Done], reach: Reach, curves: Curves) -> None:
+        if request is self._latest:
+            request[1](reach, curves)
 
 
 @lru_cache(maxsize=1)
