@@ -10,6 +10,7 @@ from engine import (
     critical_sparsity,
     power_limit,
 )
+from engine.limits.atlas import Atlas
 from engine.limits.families import FAMILIES
 from engine.limits.lasso_curve import lasso_curve
 from engine.limits.two_level_closed_form import beyond_limit
@@ -155,23 +156,25 @@ def exact(target: Target) -> tuple[Reach, Curves]:
     return reach, exact_curves(*reach.study_ratios)
 
 
-def swift_curves(sampling_ratio: float, sparsity: float) -> Curves:
-    """Return the curves that need no search; the others stay open."""
+def swift_curves(sampling_ratio: float, sparsity: float, atlas: Atlas | None = None) -> Curves:
+    """Return the curves that need no search, and those of `SEARCHED` as the atlas has them."""
     below, above = _nodes(power_limit(sampling_ratio, sparsity))
     tpp = np.concatenate([below, above])
     u, q = lasso_curve(sampling_ratio, sparsity)
     lasso = np.interp(below, u[::-1], q[::-1])
     beyond = beyond_limit(above, sparsity, critical_sparsity(sampling_ratio))
-    unknown = np.full(len(tpp), np.nan)
-    return Curves(
-        tpp,
-        {
-            "lasso": np.concatenate([lasso, unknown[len(below) :]]),
-            "two-level-closed-form": np.concatenate([lasso, beyond]),
-            **dict.fromkeys(SEARCHED, unknown),
-        },
-        exact=False,
-    )
+    fdp = {
+        "lasso": np.concatenate([lasso, np.full(len(above), np.nan)]),
+        "two-level-closed-form": np.concatenate([lasso, beyond]),
+    }
+    ceiling = fdp["two-level-closed-form"]
+    for key in SEARCHED:
+        if atlas is None:
+            fdp[key] = np.full(len(tpp), np.nan)
+        else:
+            read = np.interp(tpp, *atlas.curve(key, sampling_ratio, sparsity))
+            fdp[key] = ceiling = np.minimum(read, ceiling)  # the order of the curves is certain
+    return Curves(tpp, fdp, exact=False)
 
 
 @lru_cache(maxsize=256)

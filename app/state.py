@@ -8,15 +8,16 @@ checked as a whole before any of it is taken; a bad one leaves everything as it 
 import base64
 import dataclasses
 import math
-from importlib import resources
 from typing import Any
 
 import param
 
 from app.evaluation import Evaluate
 from app.reach import Curves, Reach, Target, swift_curves, swift_reach
+from app.ready import asset
 from app.words import computed, typed
 from engine.files import SHORTLIST_BYTES, STUDY_BYTES
+from engine.limits.atlas import Atlas
 from engine.limits.families import FAMILIES
 from engine.quantities import QUANTITIES, SAMPLING_RATIO, SPARSITY
 from engine.shortlist import MOST_POINTS, Point, dump_shortlist, keep, load_shortlist
@@ -77,8 +78,9 @@ class Session(param.Parameterized):
     curves = param.ClassSelector(default=None, class_=Curves, allow_None=True)
     points = param.Parameter(default=())
 
-    def __init__(self, evaluate: Evaluate, **params: Any) -> None:
+    def __init__(self, evaluate: Evaluate, atlas: Atlas | None = None, **params: Any) -> None:
         super().__init__(**params)
+        self._atlas = atlas
         self.typed: frozenset[str] = frozenset()  # fields of the last change that held texts
         self._evaluate = evaluate
         self._belief = dict(_BELIEF)
@@ -265,7 +267,7 @@ class Session(param.Parameterized):
         ratios = (runs / candidates, actives / candidates)
         if self.reach is not None and self.reach.study_ratios == ratios:
             return {"reach": swift_reach(target, self.curves)}
-        curves = swift_curves(*ratios)
+        curves = swift_curves(*ratios, self._atlas)
         return {"reach": swift_reach(target, curves), "curves": curves}
 
     def _set_points(self, points: tuple[Point, ...], notice: str) -> None:
@@ -283,11 +285,6 @@ def point_letter(index: int) -> str:
     """Name the kept points A to Z, then A2, B2 and so on."""
     turn, place = divmod(index, 26)
     return chr(ord("A") + place) + (str(turn + 1) if turn else "")
-
-
-def asset(name: str) -> bytes:
-    """Return the content of a file in assets/."""
-    return resources.files("app.assets").joinpath(name).read_bytes()
 
 
 def _uploaded(upload: dict[str, Any], limit: int, what: str) -> bytes:

@@ -10,6 +10,7 @@ from markupsafe import Markup
 from app.coalesce import Coalescer
 from app.components.sheet import Sheet
 from app.evaluation import evaluator
+from app.ready import ready_atlas
 from app.state import Session
 from app.theme import css_variables
 from app.views.reach import ReachView
@@ -34,7 +35,7 @@ _MARK = (
 def page(study: Study | None) -> pn.Template:
     """Build the page of a new session, opened on `study`."""
     doc = pn.state.curdoc
-    session = Session(evaluate=evaluator(doc))
+    session = Session(evaluate=evaluator(doc), atlas=ready_atlas())
     inbox = Coalescer(doc, session.propose)
     rail = StudyRail(session, inbox)
     reach = ReachView(session)
