@@ -84,3 +84,19 @@ def _early(penalty: str, u: Array, delta: float, eps: float) -> Any:
     return np.array(
         [kind != "searched" for kind in two_level_optima(u, deltas, sparsities).kind]
     )
+
+
+if __name__ == "__main__":
+    # `python -m engine.limits.atlas_build FILE` makes the ready atlas again: some ten minutes
+    # of one processor.
+    import sys
+    from concurrent.futures import ProcessPoolExecutor
+    from pathlib import Path
+
+    from engine.limits.atlas import dump_atlas
+
+    def _tell(done: int, total: int) -> None:
+        print(f"{done} of {total} rows", end="\r", file=sys.stderr, flush=True)
+
+    with ProcessPoolExecutor() as _executor:
+        Path(sys.argv[1]).write_bytes(dump_atlas(build_atlas(_executor, _tell)))
