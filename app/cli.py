@@ -41,16 +41,27 @@ def main(argv: list[str] | None = None) -> int:
     """Run the command and return its exit code."""
     arguments = sys.argv[1:] if argv is None else argv
     try:
-        return _run(arguments)
+        try:
+            return _run(arguments)
+        finally:
+            print(end="", flush=True)  # what cannot be written shows here, not at exit
     except InputError as error:
         line = " ".join(str(error).split())
         print(f"sparsereach: {line}", file=sys.stderr)
         return 2
     except BrokenPipeError:  # the reader of our output has gone
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        _discard_output()
         return 0
+    except OSError as error:
+        _discard_output()
+        print(f"sparsereach: {error.strerror or error}", file=sys.stderr)
+        return 1
     except KeyboardInterrupt:
         return 1
+
+
+def _discard_output() -> None:
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 def _run(arguments: list[str]) -> int:

@@ -290,7 +290,7 @@ def point_letter(index: int) -> str:
 def _uploaded(upload: dict[str, Any], limit: int, what: str) -> bytes:
     """The bytes of an upload; one that the browser found too large arrives without them."""
     if upload["size"] > limit:
-        most, size = f"{limit / 1e6:.0f} MB", f"{upload['size'] / 1e6:.3g} MB"
+        most, size = f"{limit / 1e6:.0f} MB", f"{upload['size'] / 1e6:.9g} MB"
         raise ValueError(f"{what} must be at most {most}, not {size}")
     return base64.b64decode(upload["content"])
 

@@ -44,7 +44,8 @@ def _check(quantity: Quantity, value: Any) -> Array:
         array = np.asarray(None)
     if array.dtype.kind not in "iuf":
         raise ValueError(f"{quantity.name} must be {quantity.rule}, not {shown(value)}")
-    array = array.astype(np.float64)
+    with np.errstate(over="ignore"):  # a long double beyond every float is refused as infinite
+        array = array.astype(np.float64)
     bad = ~quantity.admits(array)
     if bad.any():
         raise ValueError(f"{quantity.name} must be {quantity.rule}, not {shown(array[bad][0])}")

@@ -26,6 +26,9 @@ SHORTLIST_BYTES = 10_000_000
 # Deeper than any of our files; far from the depth at which the parser itself gives up.
 _DEPTH = 20
 
+# More than any float has; far from the number at which Python itself gives up.
+_DIGITS = 500
+
 
 def parse(content: bytes | str, limit: int, what: str = "file") -> dict[str, Any]:
     """Return the JSON object in `content`.
@@ -43,7 +46,7 @@ def parse(content: bytes | str, limit: int, what: str = "file") -> dict[str, Any
     ------
     ValueError
         If it is too large, not UTF-8, not JSON, not an object, too deep, holds a key twice or
-        a number that is not finite.
+        a number that is not finite or has too many digits.
 
     Examples
     --------
@@ -61,7 +64,9 @@ def parse(content: bytes | str, limit: int, what: str = "file") -> dict[str, Any
             f"{what} must be UTF-8, not other bytes (at byte {error.start})"
         ) from None
     try:
-        data = json.loads(text, object_pairs_hook=_once, parse_constant=_not_finite)
+        data = json.loads(
+            text, object_pairs_hook=_once, parse_constant=_not_finite, parse_int=_whole
+        )
     except json.JSONDecodeError as error:
         place = f"line {error.lineno}, column {error.colno}"
         raise ValueError(f"{what} must be JSON: {error.msg} at {place}") from None
@@ -137,6 +142,12 @@ def _not_finite(word: str) -> None:
     raise ValueError(f"numbers must be finite, not {word}")
 
 
+def _whole(digits: str) -> int:
+    if len(digits) > _DIGITS:
+        raise ValueError(f"numbers must have at most {_DIGITS} digits, not {len(digits)}")
+    return int(digits)
+
+
 def _check_depth(data: Any, what: str) -> None:
     level: list[Any] = [data]
     for _ in range(_DEPTH):
@@ -146,10 +157,9 @@ def _check_depth(data: Any, what: str) -> None:
     raise ValueError(f"{what} must be nested at most {_DEPTH} deep")
 
 
-def _children(node: Any) -> Iterable[Any]:
-    if isinstance(node, dict):
-        return node.values()
-    return node if isinstance(node, list) else ()
+def _children(node: Any) -> list[Any]:
+    values = node.values() if isinstance(node, dict) else node
+    return [value for value in values if isinstance(value, dict | list)]
 
 
 def _join(where: str, key: str) -> str:
@@ -158,7 +168,7 @@ def _join(where: str, key: str) -> str:
 
 
 def _size(count: int) -> str:
-    return f"{count / 1e6:.3g} MB" if count >= 1e5 else f"{count} bytes"
+    return f"{count / 1e6:.9g} MB" if count >= 1e5 else f"{count} bytes"
 
 
 def _block(value: Any, depth: int) -> str:

@@ -5,6 +5,7 @@ help texts are all made from the declarations at the end of this file.
 """
 
 import math
+import re
 from dataclasses import dataclass
 from typing import Any
 
@@ -148,7 +149,7 @@ def shown(value: Any) -> str:
         return "a number of more than 60 digits"
     if isinstance(value, float) and value.is_integer() and abs(value) < 1e15:
         value = int(value)
-    text = repr(value)
+    text = re.sub(r"\n *", " ", repr(value))  # arrays come on several lines
     return text if len(text) <= 60 else text[:57] + "..."
 
 
