@@ -58,17 +58,19 @@ class _Requests:
         if self._loaded:
             self._doc.add_timeout_callback(partial(self._start, request), REST_MS)
 
-    def _start(self, request: tuple[Target, Done]) -> None:
-        if request is self._latest:
-            submit(exact, request[0]).add_done_callback(partial(self._finish, request))
+    def _start(self, request: tuple[Target, Done], tries: int = 2) -> None:
+        if request is self._latest and tries:
+            finish = partial(self._finish, request, tries - 1)
+            submit(exact, request[0]).add_done_callback(finish)
 
-    def _finish(
-        self, request: tuple[Target, Done], future: Future[tuple[Reach, Curves]]
-    ) -> None:
+    def _finish(self, request: tuple[Target, Done], tries: int, future: Future[Any]) -> None:
         """Runs in a thread of the pool: only hands over to the session's event loop."""
-        if not future.cancelled() and future.exception() is None:
-            answer = future.result()
-            self._doc.add_next_tick_callback(partial(self._hand_over, request, *answer))
+        if future.cancelled():
+            return
+        if isinstance(future.exception(), BrokenExecutor):  # the worker was killed
+            self._doc.add_next_tick_callback(partial(self._start, request, tries))
+            return
+        self._doc.add_next_tick_callback(partial(self._hand_over, request, *future.result()))
 
     def _hand_over(self, request: tuple[Target, Done], reach: Reach, curves: Curves) -> None:
         if request is self._latest:

@@ -1,5 +1,8 @@
 """Exact values from a worker: rested, latest only, and in spite of a broken pool."""
 
+import os
+import signal
+import time
 from concurrent.futures import BrokenExecutor, Future
 
 import pytest
@@ -106,3 +109,18 @@ def test_it_gives_up_after_the_second_try(monkeypatch):
     for _ in range(6):
         loop.run()
     assert len(asked) == 2
+
+
+def test_a_killed_worker_is_replaced(pool):
+    """A real one, killed between two requests."""
+    loop, answers = Loop(), []
+    requests = _Requests(loop)
+    requests.open()
+    os.kill(submit(os.getpid).result(30), signal.SIGKILL)
+    requests.take(TARGET, lambda *answer: answers.append(answer))
+    for _ in range(100):
+        loop.run()
+        if answers:
+            break
+        time.sleep(0.1)
+    assert answers[0][0].exact
