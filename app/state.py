@@ -68,7 +68,8 @@ class Session(param.Parameterized):
 
     keeps_counts = param.Boolean(default=True, doc="What new candidates leave as it is.")
     shown = param.Parameter(default=tuple(FAMILIES), doc="Penalties whose curves are drawn.")
-    chosen = param.String(default="lasso", doc="The penalty hatched, and kept.")
+    hatched = param.String(default="lasso", doc="The penalty whose closed region is hatched.")
+    kept_as = param.String(default="sorted-l1", doc="The penalty that a point is kept for.")
     theme = param.String(default="light")
 
     problem = param.Parameter(default=None, doc="What is wrong with the last change, or None.")
@@ -143,10 +144,15 @@ class Session(param.Parameterized):
         wanted = {*self.shown, penalty} if shown else set(self.shown) - {penalty}
         self.shown = tuple(key for key in FAMILIES if key in wanted)
 
-    def choose(self, penalty: str) -> None:
-        """Choose the penalty that is hatched and kept."""
+    def hatch(self, penalty: str) -> None:
+        """Hatch where `penalty` cannot get."""
         if penalty in FAMILIES:
-            self.chosen = penalty
+            self.hatched = penalty
+
+    def keep_as(self, penalty: str) -> None:
+        """Choose the penalty that a point is kept for: one that has a witness."""
+        if penalty in FAMILIES and FAMILIES[penalty].witness is not None:
+            self.kept_as = penalty
 
     def turn_theme(self) -> None:
         """Change between light and dark."""
@@ -155,26 +161,24 @@ class Session(param.Parameterized):
     # ---- the shortlist
 
     def cannot_keep(self) -> str:
-        """Why the chosen penalty has no point at the target's TPP; empty when it has one."""
+        """Why the penalty to keep has no point at the target's TPP; empty when it has one."""
         if self.reach is None:
             return "runs, candidates and actives come first"
-        if FAMILIES[self.chosen].witness is None:
-            return "the closed form is a curve of two-level: keep it as two-level"
-        if self.chosen == "lasso" and math.isnan(self.reach.lowest["lasso"]):
+        if self.kept_as == "lasso" and math.isnan(self.reach.lowest["lasso"]):
             return f"no lasso has TPP {typed(self.tpp)}: its power limit is lower"
         return ""
 
     def keep_point(self) -> None:
-        """Keep the point of lowest FDP that the chosen penalty has at the target's TPP."""
+        """Keep the point of lowest FDP that the penalty has at the target's TPP."""
         study = self.study()
         if study is None or self.cannot_keep():
             return
         if len(self.points) >= MOST_POINTS:
             self.notice = f"A shortlist holds at most {MOST_POINTS} points."
             return
-        label = FAMILIES[self.chosen].label
+        label = FAMILIES[self.kept_as].label
         name = f"{label[0].upper()}{label[1:]} at TPP {typed(self.tpp)}"
-        point = keep(study, self.chosen, self.tpp, name)
+        point = keep(study, self.kept_as, self.tpp, name)
         letter = point_letter(len(self.points))
         notice = (
             f"Kept as {letter}: {label}, TPP {typed(point.tpp)}, FDP {computed(point.fdp)}."

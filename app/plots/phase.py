@@ -6,9 +6,11 @@ import numpy as np
 from bokeh.models import ColumnDataSource
 
 from app.plots.canvas import Canvas, put
+from app.plots.handle import Handle
 from app.reach import Reach
 from app.theme import Theme
 from engine import critical_sparsity
+from engine.quantities import SAMPLING_RATIO, SPARSITY
 
 __all__ = ["PhasePlane"]
 
@@ -41,6 +43,7 @@ class PhasePlane:
             {"x": [], "y": [], "text": [], "dx": [], "dy": [], "align": []}
         )
         self._draw()
+        self.handle = Handle(self.figure, self.study, SAMPLING_RATIO.slider, SPARSITY.slider)
 
     @property
     def figure(self) -> Any:
@@ -52,13 +55,15 @@ class PhasePlane:
         fig, delta, eps = self.figure, reach.sampling_ratio, reach.sparsity
         right = _stretch(delta, _RATIO_STRETCHES)
         top = _stretch(eps, _SPARSITY_STRETCHES)
+        if self.handle.held:
+            right, top = fig.x_range.end, fig.y_range.end  # the frame stands still for the hand
         if (fig.x_range.end, fig.y_range.end) != (right, top):
             fig.x_range.update(end=right)
             fig.y_range.update(end=top)
             put(self.notes, _transition_note(right, top))
         elif not self.notes.data["x"]:
             put(self.notes, _transition_note(right, top))
-        put(self.study, {"x": [delta], "y": [eps]})
+        self.handle.place(delta, eps)
 
     def clear(self) -> None:
         """Show the transition only."""

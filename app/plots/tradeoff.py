@@ -7,9 +7,11 @@ from bokeh.core.properties import value
 from bokeh.models import ColumnDataSource
 
 from app.plots.canvas import Canvas, put
+from app.plots.handle import Handle
 from app.reach import Curves, Reach
 from app.theme import CANVAS_FONT, STROKES, Theme
 from app.words import computed
+from engine.quantities import FDP, TPP
 
 __all__ = ["TradeoffPlane"]
 
@@ -42,6 +44,7 @@ class TradeoffPlane:
             {"x": [], "y": [], "text": [], "y_target": [], "dx": []}, name="kept"
         )
         self._draw()
+        self.handle = Handle(self.figure, self.target, TPP.slider, FDP.slider)
 
     @property
     def figure(self) -> Any:
@@ -81,7 +84,7 @@ class TradeoffPlane:
         )
         shown = [limit, limit] if limit < 1.0 else []
         put(self.limit, {"x": shown, "y": [0.0, 1.0][: len(shown)]})
-        put(self.target, {"x": [u], "y": [q]})
+        self.handle.place(u, q)
         put(self.notes, _notes([*_limit_notes(reach), _random_note(reach), *_closed(reach)]))
 
     def show_kept(self, kept: list[tuple[str, float, float, float]]) -> None:

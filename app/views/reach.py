@@ -1,11 +1,13 @@
 """The Reach page: two planes, the names at the curves' ends, the verdict, and keeping."""
 
 import math
+from functools import partial
 from typing import Any
 
 import panel as pn
 from markupsafe import Markup
 
+from app.coalesce import Coalescer
 from app.components.ends import Ends
 from app.components.sheet import Sheet
 from app.plots.phase import PhasePlane
@@ -16,8 +18,12 @@ from app.theme import THEMES
 from app.verdict import Piece, verdict
 from app.words import NONE, computed, count, typed
 from engine.limits.families import FAMILIES
+from engine.quantities import FDP, SAMPLING_RATIO, SPARSITY, TPP, Quantity
 
 __all__ = ["ReachView"]
+
+# A hand on a plane of some 500 pixels moves in steps of thousandths.
+_DRAG_DIGITS = 3
 
 # Beside the other names of its column, the closed form needs no more.
 _SHORT = {"two-level-closed-form": "closed form"}
@@ -26,19 +32,22 @@ _SHORT = {"two-level-closed-form": "closed form"}
 class ReachView:
     """Pictures and words of one session's Reach page, built once."""
 
-    def __init__(self, session: Session) -> None:
+    def __init__(self, session: Session, inbox: Coalescer) -> None:
         self._session = session
+        self._inbox = inbox
         self.tradeoff = TradeoffPlane()
         self.phase = PhasePlane()
+        self.tradeoff.handle.follow(partial(self._drag, TPP, FDP), self._let_go)
+        self.phase.handle.follow(partial(self._drag, SAMPLING_RATIO, SPARSITY), self._let_go)
         self.ends = Ends()
         self.verdict = Sheet("verdict", self._use, live=True)
         self.keep = Sheet("keep", self._use)
         watch = session.param.watch
-        watch(self._show_curves, ["curves", "chosen", "shown"])
+        watch(self._show_curves, ["curves", "hatched", "shown"])
         watch(self._show_reach, ["reach", "problem"])
         watch(self._show_ends, ["reach", "shown"])
         watch(self._show_kept, ["points", "curves"])
-        watch(self._show_keep, ["reach", "chosen", "notice", "problem", "points"])
+        watch(self._show_keep, ["reach", "kept_as", "notice", "problem", "points"])
         watch(self._dim, ["problem"])
         watch(self._repaint, ["theme"])
         self._repaint()
@@ -58,13 +67,26 @@ class ReachView:
             "keep": self.keep,
         }
 
+    def _drag(self, across: Quantity, up: Quantity, x: float, y: float) -> None:
+        self._inbox.post(across.name, round(x, _DRAG_DIGITS))
+        self._inbox.post(up.name, round(y, _DRAG_DIGITS))
+
+    def _let_go(self) -> None:
+        """Let the target rest on whole hundredths, and both handles where the session is."""
+        session = self._session
+        if session.reach is not None:
+            self._inbox.post(TPP.name, max(round(session.tpp, 2), TPP.step))
+            self._inbox.post(
+                FDP.name, min(max(round(session.fdp, 2), FDP.step), 1.0 - FDP.step)
+            )
+
     def _use(self, data: dict[str, Any]) -> None:
         session = self._session
         match data.get("do"):
             case "keep":
                 session.keep_point()
-            case "choose":
-                session.choose(str(data.get("penalty")))
+            case "keep-as":
+                session.keep_as(str(data.get("penalty")))
             case "undo":
                 session.undo()
             case "example":
@@ -73,7 +95,7 @@ class ReachView:
     def _show_curves(self, *_: Any) -> None:
         session = self._session
         if session.curves is not None:
-            self.tradeoff.show_curves(session.curves, session.shown, session.chosen)
+            self.tradeoff.show_curves(session.curves, session.shown, session.hatched)
 
     def _show_reach(self, *_: Any) -> None:
         session = self._session
@@ -190,9 +212,9 @@ def _keep_html(session: Session) -> Markup:
         disabled=Markup('disabled title="{}"').format(refusal) if refusal else "",
         options=Markup("").join(
             Markup(
-                '<button data-do="choose" data-penalty="{0}" data-key="as-{0}" '
+                '<button data-do="keep-as" data-penalty="{0}" data-key="as-{0}" '
                 'aria-pressed="{1}">{2}</button>'
-            ).format(key, str(key == session.chosen).lower(), family.label)
+            ).format(key, str(key == session.kept_as).lower(), family.label)
             for key, family in FAMILIES.items()
             if family.witness is not None
         ),

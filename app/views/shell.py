@@ -38,7 +38,7 @@ def page(study: Study | None) -> pn.Template:
     session = Session(evaluate=evaluator(doc), atlas=ready_atlas())
     inbox = Coalescer(doc, session.propose)
     rail = StudyRail(session, inbox)
-    reach = ReachView(session)
+    reach = ReachView(session, inbox)
     shortlist = ShortlistView(session)
     frame = _Frame(session)
     if study is not None:

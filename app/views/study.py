@@ -38,7 +38,7 @@ class StudyRail:
         self.caution = Sheet("caution", html=_CAUTION)
         session.param.watch(self._show_values, ["accepted"])
         session.param.watch(self._show_problem, ["problem"])
-        session.param.watch(self._show_choices, ["keeps_counts", "shown", "chosen"])
+        session.param.watch(self._show_choices, ["keeps_counts", "shown", "hatched"])
         self._show_values()
         self._show_choices()
 
@@ -57,8 +57,8 @@ class StudyRail:
                 self._session.keep_counts(data.get("keeps") == "counts")
             case "show":
                 self._session.show(str(data.get("penalty")), bool(data.get("value")))
-            case "choose":
-                self._session.choose(str(data.get("penalty")))
+            case "hatch":
+                self._session.hatch(str(data.get("penalty")))
 
     def _show_values(self, *_: Any) -> None:
         session = self._session
@@ -118,14 +118,14 @@ def _penalty(session: Session, key: str) -> Markup:
         '<input type="checkbox" data-do="show" data-penalty="{key}" '
         'data-key="show-{key}" {checked}>'
         '<i class="sample {key}"></i>{label}</label>'
-        '<button class="hatch {key}" data-do="choose" data-penalty="{key}" '
-        'data-key="hatch-{key}" aria-pressed="{chosen}" '
+        '<button class="hatch {key}" data-do="hatch" data-penalty="{key}" '
+        'data-key="hatch-{key}" aria-pressed="{hatched}" '
         'aria-label="Hatch where {label} cannot get"></button></div>'
     ).format(
         key=key,
         label=label,
         checked=Markup("checked") if key in session.shown else "",
-        chosen=str(key == session.chosen).lower(),
+        hatched=str(key == session.hatched).lower(),
     )
 
 

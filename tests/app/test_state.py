@@ -112,9 +112,9 @@ def test_the_target_alone_keeps_exact_curves(session):
 
 
 def test_keep_remove_undo(session):
-    session.choose("sorted-l1")
+    session.keep_as("sorted-l1")
     session.keep_point()
-    session.choose("two-level")
+    session.keep_as("two-level")
     session.keep_point()
     assert [point.penalty for point in session.points] == ["sorted-l1", "two-level"]
     session.remove(0)
@@ -126,18 +126,17 @@ def test_keep_remove_undo(session):
 
 
 def test_what_has_no_point_is_not_kept(session):
-    session.choose("lasso")
+    session.keep_as("lasso")
     session.keep_point()
     assert session.points == ()
     assert session.cannot_keep() == "no lasso has TPP 0.80: its power limit is lower"
-    session.choose("two-level-closed-form")
-    assert "keep it as two-level" in session.cannot_keep()
-    session.choose("no such penalty")
-    assert session.chosen == "two-level-closed-form"
+    session.keep_as("two-level-closed-form")  # a curve, not a penalty
+    session.keep_as("no such penalty")
+    assert session.kept_as == "lasso"
 
 
 def test_marks_stand_on_the_study_they_were_kept_on(session):
-    session.choose("sorted-l1")
+    session.keep_as("sorted-l1")
     session.propose({"fdp": 0.3})
     session.keep_point()
     ((letter, tpp, fdp, aimed),) = session.kept_marks()
@@ -148,7 +147,7 @@ def test_marks_stand_on_the_study_they_were_kept_on(session):
 
 
 def test_import_is_all_or_nothing_and_knows_what_it_has(session):
-    session.choose("sorted-l1")
+    session.keep_as("sorted-l1")
     session.keep_point()
     text = session.exported().encode()
     session.import_points(upload(text))
@@ -159,7 +158,7 @@ def test_import_is_all_or_nothing_and_knows_what_it_has(session):
 
 
 def test_the_shortlist_has_an_end(session):
-    session.choose("sorted-l1")
+    session.keep_as("sorted-l1")
     session.keep_point()
     session.param.update(points=session.points * MOST_POINTS)
     session.keep_point()
@@ -179,3 +178,9 @@ def test_titles_are_cut_not_refused(session):
 
 def test_letters_go_on_after_z():
     assert [point_letter(i) for i in (0, 25, 26, 52)] == ["A", "Z", "A2", "A3"]
+
+
+def test_what_is_hatched_is_a_penalty(session):
+    session.hatch("two-level-closed-form")
+    session.hatch("no such penalty")
+    assert session.hatched == "two-level-closed-form"

@@ -55,6 +55,7 @@ def test_a_kept_point_is_exported_with_its_numbers(open_page, demo_url):
 def test_a_penalty_without_a_point_cannot_be_kept(open_page, demo_url):
     page = open_page(demo_url)
     wait_exact(page)
+    choose(page, "lasso")
     keep = page.get_by_role("button", name="Keep this point")
     expect(keep).to_be_disabled()
     expect(page.locator(".sheet.keep")).to_contain_text("no lasso has TPP 0.80")
