@@ -3,6 +3,7 @@
 import copy
 import json
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -11,7 +12,8 @@ from hypothesis import strategies as st
 
 from engine import lasso_boundary, sorted_l1_boundary, two_level_boundary
 from engine.demo import DEMO_STUDY, demo_points
-from engine.shortlist import MOST_POINTS, Point, dump_shortlist, keep, load_shortlist
+from engine.limits.families import witness
+from engine.shortlist import MOST_POINTS, dump_shortlist, keep, load_shortlist
 
 POINTS = demo_points()
 TEXT = dump_shortlist(POINTS)
@@ -41,7 +43,9 @@ def test_weights_are_run_length_pairs_that_fall():
     assert values == sorted(values, reverse=True)
     assert len(set(values)) == len(values)
     full = np.repeat(values, [count for _, count in weights])
-    assert full.shape == (2000,)
+    exact = witness("sorted-l1", 0.8, 0.3, 0.2).normalised_weights(2000)
+    # Half a unit of the sixth digit.
+    assert full == pytest.approx(exact, rel=5.1e-6)
 
 
 def test_two_level_weights_are_its_levels():
@@ -85,6 +89,48 @@ def test_any_names_notes_and_order_come_back_to_the_byte(name, note, order):
     points = tuple(POINTS[i].renamed(name, note) for i in order)
     text = dump_shortlist(points)
     assert dump_shortlist(load_shortlist(text.encode())) == text
+
+
+@settings(max_examples=60, deadline=None)
+@given(
+    st.sampled_from(["lasso", "two-level", "sorted-l1"]),
+    st.floats(0.001, 1.0),
+    st.integers(2, 400),
+    st.floats(0.01, 3.0),
+    st.floats(0.001, 0.999),
+)
+def test_whatever_can_be_kept_comes_back_to_the_byte(penalty, tpp, candidates, ratio, sparsity):
+    runs = max(1, round(ratio * candidates))
+    actives = min(max(1, round(sparsity * candidates)), candidates - 1)
+    study = replace(DEMO_STUDY, runs=runs, candidates=candidates, actives=actives)
+    if penalty == "lasso" and math.isnan(
+        lasso_boundary(tpp, study.sampling_ratio, study.sparsity)
+    ):
+        with pytest.raises(ValueError, match="^tpp must be below the power limit"):
+            keep(study, penalty, tpp)
+        return
+    points = (keep(study, penalty, tpp, "Kept"),)
+    text = dump_shortlist(points)
+    assert load_shortlist(text) == points
+    assert dump_shortlist(load_shortlist(text)) == text
+
+
+def test_no_points_are_a_shortlist():
+    assert load_shortlist(dump_shortlist(())) == ()
+
+
+def test_a_file_laid_out_otherwise_keeps_its_numbers_as_written():
+    data = json.loads(TEXT)
+    data["points"][0]["study"]["runs"] = 600.0
+    (first, *_) = load_shortlist(json.dumps(data))
+    assert first.study.runs == 600
+    text = dump_shortlist((first,))
+    assert '"runs": 600.0' in text
+    assert dump_shortlist(load_shortlist(text)) == text
+
+
+def two_level(levels, share=0.5):
+    return {"family": "two-level", "levels": levels, "share": share}
 
 
 def broken(change):
@@ -139,6 +185,113 @@ def broken(change):
             r"must be below the one before, not 9$",
         ),
         (lambda p: p["weights"].update(unit="sd"), r"weights.unit must be 'tau', not 'sd'$"),
+        (
+            lambda p: p["weights"]["normalised"].insert(0, p["weights"]["normalised"][0]),
+            r"^points\[2\].weights.normalised\[1\]\[0\] must be below the one before, not ",
+        ),
+        (
+            lambda p: p["weights"].update(normalised=[[1.0, 1999.5]]),
+            r"normalised\[0\]\[1\] must be a whole number .*, not 1999.5$",
+        ),
+        (
+            lambda p: p["weights"].update(normalised=[[1.0, 0]]),
+            r"normalised\[0\]\[1\] must be .* at least 1 .*, not 0$",
+        ),
+        (
+            lambda p: p["weights"].update(normalised=[[-1.0, 2000]]),
+            r"normalised\[0\]\[0\] must be a finite number at least 0, not -1$",
+        ),
+        (
+            lambda p: p["weights"].update(normalised=[[1.0, 1000, 1000]]),
+            r"normalised\[0\] must have 2 to 2 entries, not 3$",
+        ),
+        (
+            lambda p: p["weights"].update(normalised=[1.0]),
+            r"normalised\[0\] must be a list, not 1$",
+        ),
+        (
+            lambda p: p["weights"].update(normalised=[]),
+            r"weights.normalised must have 1 to 2000 entries, not 0$",
+        ),
+        (
+            lambda p: p.update(weights=None),
+            r"^points\[2\].weights must be an object, not None$",
+        ),
+        (lambda p: p.update(study=[]), r"^points\[2\].study must be an object, not \[\]$"),
+        (
+            lambda p: p["study"].update(runs=True),
+            r"^points\[2\].study.runs must be .*, not True$",
+        ),
+        (
+            lambda p: p["study"].update(schema="x"),
+            r"^points\[2\].study.schema must be 'sparsereach/study/1', not 'x'$",
+        ),
+        (lambda p: p.update(name=None), r"^points\[2\].name must be a text, not None$"),
+        (lambda p: p.update(name="x" * 121), r"name must be at most 120 characters, not 121$"),
+        (
+            lambda p: p.update(note="x" * 2001),
+            r"note must be at most 2000 characters, not 2001$",
+        ),
+        (lambda p: p.update(version=1), r"^points\[2\].version must be a text, not 1$"),
+        (
+            lambda p: p["penalty"].update(family="two-level-closed-form"),
+            r"penalty.family must be 'lasso' or 'two-level' or 'sorted-l1', not ",
+        ),
+        (
+            lambda p: p.update(penalty={"family": "two-level"}),
+            r"^points\[2\].penalty.levels must be given$",
+        ),
+        (
+            lambda p: p.update(penalty=two_level([1, 2])),
+            r"^points\[2\].penalty.levels must not rise, not \[1, 2\]$",
+        ),
+        (
+            lambda p: p.update(penalty=two_level([2])),
+            r"^points\[2\].penalty.levels must have 2 to 2 entries, not 1$",
+        ),
+        (
+            lambda p: p.update(penalty=two_level([2, "low"])),
+            r"^points\[2\].penalty.levels must be a finite number at least 0, not 'low'$",
+        ),
+        (
+            lambda p: p.update(penalty=two_level([2, 1], 1.5)),
+            r"^points\[2\].penalty.share must be .* at most 1, not 1.5$",
+        ),
+        (
+            lambda p: p["strength"].update(zero_threshold=-1),
+            r"strength.zero_threshold must be a finite number at least 0, not -1$",
+        ),
+        (
+            lambda p: p["strength"].update(lambda_per_run=0),
+            r"strength.lambda_per_run must be null, not 0$",
+        ),
+        (lambda p: p["strength"].pop("reason"), r"strength.reason must be given$"),
+        (
+            lambda p: p["strength"].update(lamdba=1),
+            r"^points\[2\].strength.lamdba must be a known key; did you mean lambda\?$",
+        ),
+        (lambda p: p["predicted"].update(tpp=0), r"predicted.tpp must be .*, not 0$"),
+        (lambda p: p["predicted"].update(fdp=1), r"predicted.fdp must be .* below 1, not 1$"),
+        (lambda p: p["predicted"].update(fdp="0"), r"predicted.fdp must be .*, not '0'$"),
+        (lambda p: p["limits"].update(two_level=False), r"two_level must be .*, not False$"),
+        (
+            lambda p: p["limits"].update(critical_sparsity=None),
+            r"limits.critical_sparsity must be .*, not None$",
+        ),
+        (lambda p: p["limits"].pop("sorted_l1"), r"limits.sorted_l1 must be given$"),
+        (lambda p: p["witness"].update(law=[]), r"law must have 1 to 3 entries, not 0$"),
+        (
+            lambda p: p["witness"]["law"][0].update(share=0),
+            r"law\[0\].share must be .*, not 0$",
+        ),
+        (lambda p: p["witness"]["law"][0].update(size=0), r"law\[0\].size must be .*, not 0$"),
+        (lambda p: p["witness"].update(risk=-1), r"witness.risk must be .*, not -1$"),
+        (lambda p: p["witness"].update(slope=1.1), r"witness.slope must be .*, not 1.1$"),
+        (
+            lambda p: p["witness"].update(reason=None),
+            r"witness.reason must be a text, not None$",
+        ),
+        (lambda p: p["witness"].update(resolved=None), r"resolved must be true or false, not "),
     ],
 )
 def test_a_file_is_taken_whole_or_refused_at_its_first_fault(change, message):
@@ -151,12 +304,31 @@ def test_files_of_another_kind():
         ValueError, match="schema must be 'sparsereach/shortlist/1', not 'spars"
     ):
         load_shortlist(DEMO_STUDY.dumps())
+    with pytest.raises(ValueError, match="^points must be given$"):
+        load_shortlist('{"schema": "sparsereach/shortlist/1"}')
+    with pytest.raises(ValueError, match="^schema must be given$"):
+        load_shortlist('{"points": []}')
+    with pytest.raises(ValueError, match="^points must be a list, not {}$"):
+        load_shortlist('{"schema": "sparsereach/shortlist/1", "points": {}}')
+    with pytest.raises(ValueError, match=r"^points\[0\] must be an object, not 3$"):
+        load_shortlist('{"schema": "sparsereach/shortlist/1", "points": [3]}')
+    with pytest.raises(
+        ValueError, match="^shortlist file must be at most 10 MB, not 10.000001"
+    ):
+        load_shortlist(b" " * 10_000_001)
+    with pytest.raises(ValueError, match="^'name' must be given once, not twice"):
+        load_shortlist(TEXT.replace('"note":', '"name":', 1))
     many = json.dumps({"schema": "sparsereach/shortlist/1", "points": [{}] * (MOST_POINTS + 1)})
     with pytest.raises(ValueError, match="points must have 0 to 200 entries, not 201"):
         load_shortlist(many)
 
 
-def test_points_do_not_share_what_they_hold():
-    one = load_shortlist(TEXT)[0]
-    other = Point(copy.deepcopy(one.data), one.study)
-    assert one == other
+def test_a_predicted_fdp_may_round_to_zero_though_no_target_may():
+    text = broken(lambda p: p["predicted"].update(fdp=0))
+    assert load_shortlist(text)[2].fdp == 0.0
+
+
+def test_renaming_leaves_the_kept_point_alone():
+    before = copy.deepcopy(POINTS[0].data)
+    POINTS[0].renamed("Other", "why")
+    assert POINTS[0].data == before
