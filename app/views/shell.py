@@ -37,8 +37,8 @@ def page(study: Study | None) -> pn.Template:
     doc = pn.state.curdoc
     session = Session(evaluate=evaluator(doc), atlas=ready_atlas())
     inbox = Coalescer(doc, session.propose)
+    reach = ReachView(session, inbox)  # first, so that its pictures change first
     rail = StudyRail(session, inbox)
-    reach = ReachView(session, inbox)
     shortlist = ShortlistView(session)
     frame = _Frame(session)
     if study is not None:

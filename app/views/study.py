@@ -37,6 +37,7 @@ class StudyRail:
         self.penalties = Sheet("penalties", self._use)
         self.caution = Sheet("caution", html=_CAUTION)
         session.param.watch(self._show_values, ["accepted"])
+        session.param.watch(self._show_transition, ["reach"])
         session.param.watch(self._show_problem, ["problem"])
         session.param.watch(self._show_choices, ["keeps_counts", "shown", "hatched"])
         self._show_values()
@@ -69,11 +70,17 @@ class StudyRail:
                 low, high = ratio.slider
                 changes["low"] = max(1, round(low * candidates))
                 changes["high"] = max(2, round(high * candidates))
-            if name == ACTIVES.name and session.reach:
-                changes["tick"] = session.reach.critical_sparsity * candidates
             self._update(name, changes)
         for name in (CANDIDATES.name, TPP.name, FDP.name):
             self._update(name, {"value": getattr(session, name)})
+
+    def _show_transition(self, *_: Any) -> None:
+        """Mark the transition on the slider of the actives, once the hand rests."""
+        reach = self._session.reach
+        if reach is not None and reach.exact:
+            tick = reach.critical_sparsity * reach.candidates
+            if self.controls[ACTIVES.name].tick != tick:
+                self.controls[ACTIVES.name].tick = tick
 
     def _update(self, name: str, changes: dict[str, Any]) -> None:
         control = self.controls[name]
