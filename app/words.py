@@ -14,7 +14,9 @@ _GROUP = "\u202f"  # narrow no-break space
 
 
 def count(value: float) -> str:
-    """Return a count, rounded, with its thousands apart."""
+    """Return a count, rounded, with its thousands apart; '<1' for less than a half of one."""
+    if 0.0 < value < 0.5:
+        return "<1"
     return f"{round(value):,}".replace(",", _GROUP).replace("-", "−")
 
 

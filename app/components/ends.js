@@ -25,7 +25,7 @@ export function render({model, el}) {
       const value = item.querySelector("dd")
       value.textContent = row.value
       if (row.pending) value.appendChild(document.createElement("i")).className = "pending"
-      item.classList.toggle("none", row.end === null)
+      item.classList.toggle("none", row.value === "none")
       list.appendChild(item)
     }
     const box = root.querySelector(".counts")

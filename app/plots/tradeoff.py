@@ -211,13 +211,18 @@ def _lasso_name(curves: Curves) -> list[_Note]:
     if not len(inside):
         return []
     at = inside[len(inside) // 3]
-    return [(float(tpp[at]), float(fdp[at]), "lasso", -14.0, -6.0, "right")]
+    # To the left of its curve, unless the curve climbs along the frame.
+    side = (-14.0, -6.0, "right") if tpp[at] > 0.1 else (14.0, -6.0, "left")
+    return [(float(tpp[at]), float(fdp[at]), "lasso", *side)]
 
 
 def _random_note(reach: Reach) -> _Note:
     chance = reach.random_fdp
     below = 12.0 if chance > 0.9 else -10.0
-    return (0.0, chance, f"picking at random {computed(chance, 2)}", 5.0, below, "left")
+    text = f"picking at random {computed(chance, 2)}"
+    if reach.power_limit < 0.4:  # the left is taken by the words on the power limit
+        return (1.0, chance, text, -5.0, below, "right")
+    return (0.0, chance, text, 5.0, below, "left")
 
 
 def _closed(reach: Reach) -> list[_Note]:
