@@ -194,6 +194,8 @@ def exact_curves(sampling_ratio: float, sparsity: float) -> Curves:
 
 
 def _nodes(u_star: float) -> tuple[Array, Array]:
+    """Nodes on either side of the power limit; above it they crowd where the curves bend."""
     if u_star < 1.0:
-        return np.linspace(0.0, u_star, _BELOW + 1), np.linspace(u_star, 1.0, _ABOVE + 1)
+        above = u_star + (1.0 - u_star) * np.linspace(0.0, 1.0, _ABOVE + 1) ** 1.7
+        return np.linspace(0.0, u_star, _BELOW + 1), above
     return np.linspace(0.0, 1.0, _BELOW + _ABOVE + 1), np.empty(0)
