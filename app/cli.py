@@ -10,7 +10,6 @@ import math
 import os
 import sys
 from collections.abc import Callable
-from importlib.metadata import version
 from pathlib import Path
 from typing import Any, NoReturn
 
@@ -22,6 +21,7 @@ from engine.limits.transition import critical_sparsity, power_limit
 from engine.quantities import SAMPLING_RATIO, SPARSITY, TPP, Quantity
 from engine.shortlist import LIMIT_KEYS, load_shortlist
 from engine.study import Study, load_study
+from engine.version import VERSION
 
 __all__ = ["main"]
 
@@ -91,7 +91,7 @@ def _main_parser() -> argparse.ArgumentParser:
     parser.add_argument("file", nargs="?", metavar="FILE", help="study file (JSON)")
     parser.add_argument("--port", type=_port, help="port on this machine; default any free one")
     parser.add_argument("--no-browser", action="store_true", help="only print the address")
-    parser.add_argument("--version", action="version", version=version("sparsereach"))
+    parser.add_argument("--version", action="version", version=VERSION)
     return parser
 
 

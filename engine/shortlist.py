@@ -11,7 +11,6 @@ reason stands beside it.
 
 import math
 from dataclasses import dataclass, replace
-from importlib.metadata import version
 from typing import Any
 
 import numpy as np
@@ -36,6 +35,7 @@ from engine.quantities import (
     shown,
 )
 from engine.study import Study, study_from
+from engine.version import VERSION
 
 __all__ = [
     "LIMIT_KEYS",
@@ -149,7 +149,7 @@ def keep(study: Study, penalty: str, tpp: float, name: str = "", note: str = "")
             "unit": "tau",
             "normalised": _run_lengths(found.normalised_weights(study.candidates)),
         },
-        "version": version("sparsereach"),
+        "version": VERSION,
     }
     return Point(data, study)
 
