@@ -75,6 +75,9 @@ def _run(arguments: list[str]) -> int:
 
 
 class _Parser(argparse.ArgumentParser):
+    def __init__(self, **options: Any) -> None:
+        super().__init__(allow_abbrev=False, **options)
+
     def error(self, message: str) -> NoReturn:
         raise InputError(message)
 
@@ -222,7 +225,9 @@ def _help(quantity: Quantity) -> str:
 
 def _number(quantity: Quantity, text: str) -> float:
     try:
-        value: Any = float(text)
+        value: Any = (
+            float(text) if "_" not in text else text
+        )  # Python's 0_3 is not a number here
     except ValueError:
         value = text
     try:

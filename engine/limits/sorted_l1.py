@@ -256,7 +256,7 @@ def fdp_of(alpha: float, u: float, eps: float) -> float:
 
 def threshold_of(fdp: float, u: float, eps: float) -> float:
     """The zero threshold at which a list with the share u of the actives has this FDP."""
-    chance = 0.5 * fdp * eps * u / ((1.0 - fdp) * (1.0 - eps))
+    chance = 0.5 * fdp * eps * u / max((1.0 - fdp) * (1.0 - eps), 1e-300)
     return max(-float(ndtri(chance)), 0.0)
 
 
