@@ -49,25 +49,25 @@ class Candidate:
 
 # The walks: each starts at a threshold this part of the way from the known one to the
 # sorted-L1 one, from the best of a grid of log gaps, heights and extra sizes. Narrow gaps win
-# in most studies and infinite ones (a gap of 8 already acts so) in dense ones; where E eta'
-# binds, a narrow gap is feasible only around its own best threshold, hence two walks. Laws that
-# hold effects tending to 0 win in a band where they part from the closed form: it is the known
-# one there, and theirs is near it.
+# in most studies and infinite ones (a gap of 8 already acts so) in dense ones. Laws that hold
+# effects tending to 0 win in a band just above the power limit: at its start they part from the
+# closed form, the known one there; at its end their thresholds are nearly those of sorted L1.
 _NARROW = np.log(np.geomspace(0.1, 0.9, 5))
 _INFINITE = np.log(np.array([8.0]))
-_ALL = np.log(np.geomspace(0.1, 8.0, 9))
 _ONE_SIZE = np.zeros(1)
 _WITH_ZEROS = np.array([0.15, 0.5, 1.2, 2.5, 5.0])
 _WALKS = (
     (0.9, _NARROW, _ONE_SIZE),
-    (0.5, _NARROW, _ONE_SIZE),
     (0.65, _INFINITE, _ONE_SIZE),
-    (0.05, _ALL, _WITH_ZEROS),
+    (0.05, _NARROW, _WITH_ZEROS),
+    (0.9, _NARROW, _WITH_ZEROS),
 )
 _LOG_HEIGHTS = np.log(np.geomspace(0.004, 6.0, 15))
 
-# The gap, height and extra size that won at a few thousand random points lie inside these.
-_BOX = ((-4.0, 2.2), (-8.0, 2.2), (0.0, 12.0))
+# The gap, height and extra size that won at a few thousand random points lie inside these
+# (logarithms of the first two).
+_LEAST_GAP = 0.02
+_BOX = ((np.log(_LEAST_GAP), 2.2), (-8.0, 2.2), (0.0, 12.0))
 
 # One step along each coordinate, both ways and none: 27 neighbours, the middle one first.
 _STENCIL = np.array(
@@ -75,7 +75,7 @@ _STENCIL = np.array(
 ) - 1.0  # fmt: skip
 
 # Moves at a fixed threshold, before it is raised again, and Newton steps of the raise.
-_ROUNDS = ((8, 7), (3, 3), (3, 3), (3, 3), (3, 3), (3, 3))
+_ROUNDS = ((8, 7), (3, 3), (3, 3), (3, 3), (3, 3))
 
 
 def search(points: Points, low: Array, high: Array) -> Candidate:
@@ -179,22 +179,31 @@ def _along(matrix: Array, rows: Array) -> Array:
 def _raise(
     points: Points, candidate: Candidate, steps: int
 ) -> tuple[Candidate, np.ndarray[Any, Any]]:
-    """Move b to where the score meets the ratio, and say where that worked."""
+    """Move b to where the score meets the ratio, and say where that worked.
+
+    The upper level stays, for it is the gap that follows b along a valley.
+    """
     least = -ndtri(0.5 * points.u) + 1e-9  # from here up the nulls leave room for the TPP
     twice = Points(*(np.tile(each, 2) for each in (points.u, points.delta, points.eps)))
-    shape = [
-        np.tile(each, 2)[:, None]
-        for each in (candidate.log_gap, candidate.log_height, candidate.extra)
-    ]
+    upper = candidate.b + np.exp(candidate.log_gap)
+    height, extra = (
+        np.tile(each, 2)[:, None] for each in (candidate.log_height, candidate.extra)
+    )
     b = candidate.b
     for _ in range(steps):  # Newton with a numerical slope, in strides of at most 0.15
         pair = np.concatenate([b, b + _NUDGE])
-        score = _score(twice, pair, common_size(pair, twice.u), *shape)[:, 0]
+        log_gap = _log_gap(np.tile(upper, 2), pair)[:, None]
+        score = _score(twice, pair, common_size(pair, twice.u), log_gap, height, extra)[:, 0]
         excess, nudged = np.split(score - twice.delta, 2)
         slope = np.maximum((nudged - excess) / _NUDGE, 1e-9)
         met = np.abs(excess) < 1e-8 * points.delta
         b = np.where(met, b, np.maximum(b - np.clip(excess / slope, -0.15, 0.15), least))
-    return Candidate(b, candidate.log_gap, candidate.log_height, candidate.extra), met
+    return Candidate(b, _log_gap(upper, b), candidate.log_height, candidate.extra), met
+
+
+def _log_gap(upper: Array, b: Array) -> Array:
+    gap: Array = np.log(np.maximum(upper - b, _LEAST_GAP))
+    return gap
 
 
 _NUDGE = 1e-5
