@@ -14,6 +14,7 @@ from typing import Any
 
 import panel as pn
 from bokeh.document import Document
+from panel.io import hold
 
 from app.reach import Curves, Reach, Target, exact
 
@@ -74,7 +75,8 @@ class _Requests:
 
     def _hand_over(self, request: tuple[Target, Done], reach: Reach, curves: Curves) -> None:
         if request is self._latest:
-            request[1](reach, curves)
+            with hold(self._doc):
+                request[1](reach, curves)
 
 
 @lru_cache(maxsize=1)

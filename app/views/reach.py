@@ -185,7 +185,9 @@ def _verdict_html(session: Session) -> Markup:
             'example study.</p><p><button class="button" data-do="example" data-key="example">'
             "Open the example</button></p>"
         )
-    return Markup("<p>{}</p>").format(Markup("").join(map(_piece, verdict(session.reach))))
+    exact = str(session.reach.exact).lower()
+    sentence = Markup("").join(map(_piece, verdict(session.reach)))
+    return Markup('<p data-exact="{}">{}</p>').format(exact, sentence)
 
 
 def _piece(piece: Piece) -> Markup:

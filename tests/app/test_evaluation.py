@@ -1,5 +1,6 @@
 """Exact values from a worker: rested, latest only, and in spite of a broken pool."""
 
+import contextlib
 import os
 import signal
 import time
@@ -29,6 +30,12 @@ class Loop:
         waiting, self.waiting = self.waiting, []
         for callback in waiting:
             callback()
+
+
+@pytest.fixture(autouse=True)
+def unheld(monkeypatch):
+    """The stand-in for a document holds no messages."""
+    monkeypatch.setattr(evaluation, "hold", contextlib.nullcontext)
 
 
 @pytest.fixture

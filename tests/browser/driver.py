@@ -64,18 +64,8 @@ def settle(page: Page) -> None:
 
 
 def wait_exact(page: Page) -> None:
-    """Wait until exact values stand in the words and in the curves."""
-    page.locator(".sheet.keep .state, .sheet.keep .notice").first.wait_for()
-    page.wait_for_function(
-        """() => {
-          const source = Bokeh.documents[0].get_model_by_name("tradeoff-curves")
-          const deep = (root) => [...root.querySelectorAll("*")].flatMap(
-            (e) => [e, ...(e.shadowRoot ? deep(e.shadowRoot) : [])])
-          const pending = deep(document).some((e) => e.classList.contains("pending"))
-          return !pending && [...source.data["sorted-l1"]].some(Number.isFinite)
-        }""",
-        timeout=20_000,
-    )
+    """Wait until exact values stand in the words; the curves change in the same message."""
+    page.locator('.sheet.verdict p[data-exact="true"]').wait_for(timeout=20_000)
 
 
 def data(page: Page, name: str) -> dict[str, list[float]]:
