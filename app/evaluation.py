@@ -12,10 +12,10 @@ from concurrent.futures import BrokenExecutor, Future, ProcessPoolExecutor
 from functools import lru_cache, partial
 from typing import Any
 
-import panel as pn
 from bokeh.document import Document
 from panel.io import hold
 
+from app.components.loading import when_loaded
 from app.reach import Curves, Reach, Target, exact
 
 __all__ = ["Evaluate", "evaluator", "start_workers"]
@@ -32,10 +32,10 @@ def evaluator(doc: Document) -> Evaluate:
 
     It waits until the study and its target have rested for `REST_MS`, evaluates in a worker,
     and calls `done` on the session's own event loop. Before the page has loaded it only
-    remembers the request: components miss what changes while they are being connected.
+    remembers the request (see `app.components.loading`).
     """
     requests = _Requests(doc)
-    pn.state.onload(requests.open)
+    when_loaded(requests.open)
     return requests.take
 
 

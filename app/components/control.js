@@ -66,15 +66,18 @@ export function render({model, el}) {
   }
 
   let value = model.value
+  const typing = new Set()
   const paint = () => {
     const text = shown(value)
-    number.value = text
-    ratio.value = shown_ratio(value)
+    // An answer to an earlier change must not wipe out what is being typed.
+    if (!typing.has(number)) number.value = text
+    if (!typing.has(ratio)) ratio.value = shown_ratio(value)
     slider.disabled = value === null
     const position = value === null ? 0 : place(value)
     slider.value = position
     slider.style.setProperty("--fill", `${position / SPAN * 100}%`)
-    slider.setAttribute("aria-valuetext", ratio.value ? `${text}, ratio ${ratio.value}` : text)
+    const share = shown_ratio(value)
+    slider.setAttribute("aria-valuetext", share ? `${text}, ratio ${share}` : text)
     const tick = $(".tick")
     const inside = model.tick !== null && model.tick > model.low && model.tick < model.high
     tick.hidden = !inside
@@ -115,15 +118,17 @@ export function render({model, el}) {
   const listen = (input, field) => {
     let before = ""
     const speak = () => {
+      typing.delete(input)
       if (input.value === before) return
       before = input.value
       model.send_msg({field, text: input.value})
     }
+    input.addEventListener("input", () => typing.add(input))
     input.addEventListener("focus", () => { before = input.value; input.select() })
     input.addEventListener("change", speak)
     input.addEventListener("keydown", (event) => {
       if (event.key === "Enter") speak()
-      if (event.key === "Escape") { paint(); before = input.value }
+      if (event.key === "Escape") { typing.delete(input); paint(); before = input.value }
     })
   }
   listen(number, id)

@@ -1,12 +1,14 @@
 """A quantity's control: number field and slider, or count and ratio on one slider."""
 
 from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 from typing import Any, ClassVar
 
 import panel as pn
 import param
 
+from app.components.loading import when_loaded
 from app.components.styles import SHARED
 from engine.quantities import Quantity
 
@@ -71,4 +73,4 @@ class Control(pn.custom.JSComponent):
         self._on_change = on_change
 
     def _handle_msg(self, data: dict[str, Any]) -> None:
-        self._on_change(data)
+        when_loaded(partial(self._on_change, data))

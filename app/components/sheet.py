@@ -1,12 +1,14 @@
 """HTML written by Python, whose buttons and fields speak back."""
 
 from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 from typing import Any, ClassVar
 
 import panel as pn
 import param
 
+from app.components.loading import when_loaded
 from app.components.styles import SHARED
 
 __all__ = ["Sheet"]
@@ -40,4 +42,4 @@ class Sheet(pn.custom.JSComponent):
 
     def _handle_msg(self, data: dict[str, Any]) -> None:
         if self._on_use is not None:
-            self._on_use(data)
+            when_loaded(partial(self._on_use, data))
