@@ -1,12 +1,12 @@
 r"""The exact two-level boundary: the lowest FDP of any two-level penalty, whatever the signal.
 
 Source of the problem: *Sharp trade-offs in high-dimensional inference via 2-level SLOPE*, arXiv
-2507.09110, 2025 (formulas from memory). The search is *derived here*; tests verify it against a
-linear program over laws on a dense grid of shrinkages. A TPP u can be had with zero threshold b
-when for some shrinkage (gap between the levels, height h of its flat stretch) and some law of
-effects both the risk and E eta' are at most the sampling ratio delta; the second condition
-holds because a fit with more distinct sizes than runs does not exist. The boundary is the
-largest such b. Wherever it has been looked for, one of these attains it:
+2507.09110, 2025 (formulas from memory). The search is *derived here*; tests verify it against
+linear programs over all laws, polished over the shrinkages. A TPP u can be had with zero
+threshold b when for some shrinkage (gap between the levels, height h of its flat stretch) and
+some law of effects both the risk and E eta' are at most the sampling ratio delta; the second
+condition holds because a fit with more distinct sizes than runs does not exist. The boundary is
+the largest such b. Wherever it has been looked for, one of these attains it:
 
 - the closed form (`engine.limits.two_level_closed_form`), the lasso boundary included;
 - the polar law of `engine.limits.sorted_l1`, where its E eta' leaves it admissible: then
