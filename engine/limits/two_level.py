@@ -49,7 +49,7 @@ def two_level_boundary(tpp: Any, sampling_ratio: Any, sparsity: Any) -> Any:
     Returns
     -------
     float or ndarray
-        FDP in [0, 1), to about 5e-5, in the broadcast shape of the arguments.
+        FDP in [0, 1), to 2e-4, in the broadcast shape of the arguments.
 
     Raises
     ------

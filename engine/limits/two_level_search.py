@@ -47,20 +47,22 @@ class Candidate:
         return size, _share(size, self.b, points.u)
 
 
-# The walks: each starts at a threshold this part of the way from the known one to the
-# sorted-L1 one, from the best of a grid of log gaps, heights and extra sizes. Narrow gaps win
-# in most studies and infinite ones (a gap of 8 already acts so) in dense ones. Laws that hold
-# effects tending to 0 win in a band just above the power limit: at its start they part from the
-# closed form, the known one there; at its end their thresholds are nearly those of sorted L1.
+# The walks: each starts at one of these thresholds, given as parts of the way from the known
+# one to the sorted-L1 one, and from the best of a grid of log gaps, heights and extra sizes.
+# Narrow gaps win in most studies and infinite ones (a gap of 8 already acts so) in dense ones.
+# There the score is nearly flat in b and crosses the ratio several times, so many thresholds
+# are tried. Laws that hold effects tending to 0 win in a band just above the power limit: at
+# its start they part from the closed form, the known one there; at its end their thresholds
+# are nearly those of sorted L1.
 _NARROW = np.log(np.geomspace(0.1, 0.9, 5))
 _INFINITE = np.log(np.array([8.0]))
 _ONE_SIZE = np.zeros(1)
 _WITH_ZEROS = np.array([0.15, 0.5, 1.2, 2.5, 5.0])
 _WALKS = (
-    (0.9, _NARROW, _ONE_SIZE),
-    (0.65, _INFINITE, _ONE_SIZE),
-    (0.05, _NARROW, _WITH_ZEROS),
-    (0.9, _NARROW, _WITH_ZEROS),
+    (np.array([0.9]), _NARROW, _ONE_SIZE),
+    (np.append(np.linspace(0.05, 0.95, 19), [0.98, 0.995]), _INFINITE, _ONE_SIZE),
+    (np.array([0.05]), _NARROW, _WITH_ZEROS),
+    (np.array([0.9]), _NARROW, _WITH_ZEROS),
 )
 _LOG_HEIGHTS = np.log(np.geomspace(0.004, 6.0, 15))
 
@@ -74,8 +76,11 @@ _STENCIL = np.array(
     sorted(np.ndindex(3, 3, 3), key=lambda ijk: ijk != (1, 1, 1)), dtype=np.float64
 ) - 1.0  # fmt: skip
 
-# Moves at a fixed threshold, before it is raised again, and Newton steps of the raise.
-_ROUNDS = ((8, 7), (3, 3), (3, 3), (3, 3), (3, 3))
+# Moves at every threshold tried, to tell them apart.
+_TRIAL = 4
+
+# Moves at a fixed threshold, before it is changed again, and Newton steps of the raise.
+_ROUNDS = ((4, 7), (3, 3), (3, 3), (3, 3), (3, 3))
 
 
 def search(points: Points, low: Array, high: Array) -> Candidate:
@@ -84,15 +89,37 @@ def search(points: Points, low: Array, high: Array) -> Candidate:
     b is -inf where none meets the ratio.
     """
     best = Candidate(np.full_like(low, -np.inf), low * 0.0, low * 0.0, low * 0.0)
-    for part, log_gaps, extras in _WALKS:
-        candidate = _first(points, low + part * (high - low), log_gaps, extras)
-        step = np.tile([0.27, 0.26, 0.3 if extras.any() else 0.0], (len(low), 1))
+    for parts, log_gaps, extras in _WALKS:
+        candidate, step = _start(points, low, high, parts, log_gaps, extras)
+        b_before, least_before = np.full_like(low, np.nan), low
         for moves, raises in _ROUNDS:
             candidate, step = _descend(points, candidate, step, moves)
-            candidate, met = _raise(points, candidate, raises)
-            best = _choose(met & (candidate.b > best.b), candidate, best)
+            raised, met = _raise(points, candidate, raises)
+            best = _choose(met & (raised.b > best.b), raised, best)
+            least = _score_of(points, candidate)
+            ahead = _secant(candidate.b, b_before, least, least_before, points.delta)
+            following = np.where(np.isnan(ahead), raised.b, np.clip(ahead, low, high))
+            b_before, least_before = candidate.b, least
+            candidate = _at(following, candidate)
             step = np.maximum(step, 0.05 * (step > 0.0))
     return best
+
+
+def _start(
+    points: Points, low: Array, high: Array, parts: Array, log_gaps: Array, extras: Array
+) -> tuple[Candidate, Array]:
+    """Return the trial of largest threshold that meets the ratio, or the one next to it."""
+    n, k = len(low), len(parts)
+    trials = Points(*(np.repeat(each, k) for each in (points.u, points.delta, points.eps)))
+    b = (low[:, None] + parts * (high - low)[:, None]).ravel()
+    candidate = _first(trials, b, log_gaps, extras)
+    step = np.tile([0.27, 0.26, 0.3 if extras.any() else 0.0], (n * k, 1))
+    candidate, step = _descend(trials, candidate, step, _TRIAL)
+    excess = (_score_of(trials, candidate) / trials.delta - 1.0).reshape(n, k)
+    # Those that meet the ratio come first, the later the better.
+    order = np.where(excess <= 0.0, -parts, excess)
+    chosen = np.arange(n) * k + order.argmin(axis=1)
+    return _choose_rows(candidate, chosen), step[chosen]
 
 
 def _first(points: Points, b: Array, log_gaps: Array, extras: Array) -> Candidate:
@@ -102,6 +129,20 @@ def _first(points: Points, b: Array, log_gaps: Array, extras: Array) -> Candidat
     score = _score(points, b, common_size(b, points.u), gap[None], height[None], extra[None])
     k = score.argmin(axis=1)
     return Candidate(b, gap[k], height[k], extra[k])
+
+
+def _secant(
+    b: Array, b_before: Array, least: Array, least_before: Array, delta: Array
+) -> Array:
+    """Where the least scores at two thresholds aim at delta; nan where they do not rise.
+
+    A stride is at most 0.3 long.
+    """
+    run, rise = b - b_before, least - least_before
+    usable = (run * rise > 0.0) & (np.abs(run) > 1e-5)
+    stride = (delta - least) * run / np.where(usable, rise, 1.0)
+    ahead: Array = np.where(usable, b + np.clip(stride, -0.3, 0.3), np.nan)
+    return ahead
 
 
 def _descend(
@@ -179,34 +220,38 @@ def _along(matrix: Array, rows: Array) -> Array:
 def _raise(
     points: Points, candidate: Candidate, steps: int
 ) -> tuple[Candidate, np.ndarray[Any, Any]]:
-    """Move b to where the score meets the ratio, and say where that worked.
-
-    The upper level stays, for it is the gap that follows b along a valley.
-    """
+    """Move b to where the score meets the ratio, and say where that worked."""
     least = -ndtri(0.5 * points.u) + 1e-9  # from here up the nulls leave room for the TPP
     twice = Points(*(np.tile(each, 2) for each in (points.u, points.delta, points.eps)))
-    upper = candidate.b + np.exp(candidate.log_gap)
-    height, extra = (
-        np.tile(each, 2)[:, None] for each in (candidate.log_height, candidate.extra)
-    )
+    double = _choose_rows(candidate, np.tile(np.arange(len(candidate.b)), 2))
     b = candidate.b
     for _ in range(steps):  # Newton with a numerical slope, in strides of at most 0.15
-        pair = np.concatenate([b, b + _NUDGE])
-        log_gap = _log_gap(np.tile(upper, 2), pair)[:, None]
-        score = _score(twice, pair, common_size(pair, twice.u), log_gap, height, extra)[:, 0]
+        score = _score_of(twice, _at(np.concatenate([b, b + _NUDGE]), double))
         excess, nudged = np.split(score - twice.delta, 2)
         slope = np.maximum((nudged - excess) / _NUDGE, 1e-9)
         met = np.abs(excess) < 1e-8 * points.delta
         b = np.where(met, b, np.maximum(b - np.clip(excess / slope, -0.15, 0.15), least))
-    return Candidate(b, _log_gap(upper, b), candidate.log_height, candidate.extra), met
-
-
-def _log_gap(upper: Array, b: Array) -> Array:
-    gap: Array = np.log(np.maximum(upper - b, _LEAST_GAP))
-    return gap
+    return _at(b, candidate), met
 
 
 _NUDGE = 1e-5
+
+
+def _at(b: Array, candidate: Candidate) -> Candidate:
+    """The candidate at another threshold.
+
+    The upper level stays, for it is the gap that follows b along a valley.
+    """
+    upper = candidate.b + np.exp(candidate.log_gap)
+    log_gap = np.log(np.maximum(upper - b, _LEAST_GAP))
+    return Candidate(b, log_gap, candidate.log_height, candidate.extra)
+
+
+def _score_of(points: Points, candidate: Candidate) -> Array:
+    """The larger of risk and E eta' of one candidate a point, shape (n,)."""
+    shape = (candidate.log_gap, candidate.log_height, candidate.extra)
+    common = common_size(candidate.b, points.u)
+    return _score(points, candidate.b, common, *(each[:, None] for each in shape))[:, 0]
 
 
 def _score(points: Points, b: Array, common: Array, *shape: Array) -> Array:
@@ -252,10 +297,14 @@ def _share(size: Array, b: Array, u: Array) -> Array:
     return share
 
 
+def _choose_rows(candidate: Candidate, rows: np.ndarray[Any, Any]) -> Candidate:
+    return Candidate(*(getattr(candidate, name)[rows] for name in _FIELDS))
+
+
+_FIELDS = ("b", "log_gap", "log_height", "extra")
+
+
 def _choose(which: np.ndarray[Any, Any], one: Candidate, other: Candidate) -> Candidate:
     return Candidate(
-        *(
-            np.where(which, getattr(one, name), getattr(other, name))
-            for name in ("b", "log_gap", "log_height", "extra")
-        )
+        *(np.where(which, getattr(one, name), getattr(other, name)) for name in _FIELDS)
     )
