@@ -206,7 +206,8 @@ def _shortlist(options: argparse.Namespace) -> int:
     if options.json:
         print(json.dumps({"points": len(points)}))
     else:
-        print(f"{options.file}: sound, {len(points)} point{'' if len(points) == 1 else 's'}")
+        words = "1 point" if len(points) == 1 else f"{len(points)} points"
+        print(f"{_printable(options.file)}: sound, {words}")
     return 0
 
 
@@ -236,11 +237,19 @@ def _number(quantity: Quantity, text: str) -> float:
         raise InputError(str(error)) from None
 
 
+def _printable(name: str) -> str:
+    """The file's name in characters that the output can hold."""
+    encoding = getattr(sys.stdout, "encoding", None) or "ascii"
+    return name.encode(encoding, "backslashreplace").decode(encoding)
+
+
 def _study(name: str) -> Study:
     return _checked(load_study, name, STUDY_BYTES)
 
 
 def _checked(load: Callable[[bytes], Any], name: str, limit: int) -> Any:
+    if not name:  # an unset variable of a shell, which Path would take for this folder
+        raise InputError("FILE must be the name of a file, not ''")
     try:
         with Path(name).open("rb") as file:
             size = os.fstat(file.fileno()).st_size

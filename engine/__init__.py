@@ -8,7 +8,7 @@ Rooms, from the ground up (each imports only rooms above it in this list):
 - roots: one-dimensional searches
 - limits: whatever the signal: transition, lasso, two-level, sorted L1, and witnesses of each;
   limits/families lists the penalties
-- files: strict JSON
+- files, run_lengths: strict JSON; weights as runs
 - study, shortlist: what the user plans, what the user keeps; their files
 - schemas: the JSON Schemas of both files
 

@@ -21,7 +21,7 @@ __all__ = [
 ]
 
 STUDY_BYTES = 1_000_000
-SHORTLIST_BYTES = 10_000_000
+SHORTLIST_BYTES = 15_000_000
 
 # Deeper than any of our files; far from the depth at which the parser itself gives up.
 _DEPTH = 20

@@ -1,7 +1,7 @@
 """The JSON Schemas (draft 2020-12) of both files, made from the quantities.
 
 `python -m engine.schemas FOLDER` writes them to a folder. What a schema cannot say (shares that
-sum to 1, fewer actives than candidates, weights that do not rise) the loaders check.
+sum to 1, fewer actives than candidates, weights that fall) the loaders check.
 """
 
 import json
@@ -30,6 +30,7 @@ from engine.quantities import (
     ZERO_THRESHOLD,
     Quantity,
 )
+from engine.run_lengths import MOST_RUNS
 from engine.shortlist import (
     LIMIT_KEYS,
     MOST_POINTS,
@@ -136,6 +137,7 @@ def _point() -> dict[str, Any]:
                     "normalised": {
                         "type": "array",
                         "minItems": 1,
+                        "maxItems": MOST_RUNS,
                         "description": "Weights by rank from the top, as [value, count] pairs",
                         "items": {
                             "type": "array",

@@ -13,8 +13,6 @@ import math
 from dataclasses import dataclass, replace
 from typing import Any
 
-import numpy as np
-
 from engine.files import SHORTLIST_BYTES, check_keys, check_list, check_text, dump, parse
 from engine.limits.families import FAMILIES, witness
 from engine.limits.transition import critical_sparsity, power_limit
@@ -34,7 +32,8 @@ from engine.quantities import (
     Quantity,
     shown,
 )
-from engine.study import Study, study_from
+from engine.run_lengths import MOST_RUNS, run_lengths
+from engine.study import Study, check_shares, study_from
 from engine.version import VERSION
 
 __all__ = [
@@ -60,9 +59,6 @@ NO_SCALE = (
 
 # Limits at the point's TPP, by their key in the file and the key of the penalty.
 LIMIT_KEYS = {key.replace("-", "_"): key for key in FAMILIES}
-
-# Six digits tell apart more than any fit does, and let equal weights run together.
-_WEIGHT_DIGITS = 6
 
 
 @dataclass(frozen=True)
@@ -147,7 +143,7 @@ def keep(study: Study, penalty: str, tpp: float, name: str = "", note: str = "")
         "witness": _witness(found),
         "weights": {
             "unit": "tau",
-            "normalised": _run_lengths(found.normalised_weights(study.candidates)),
+            "normalised": list(map(list, run_lengths(found.profile, study.candidates))),
         },
         "version": VERSION,
     }
@@ -219,18 +215,6 @@ VANISHES = "tends to 0"
 OUTGROWS = "outgrows tau"
 
 
-def _run_lengths(weights: np.ndarray[Any, Any]) -> list[list[float | int]]:
-    """Code nonincreasing weights, rounded to six digits, as [value, count] pairs."""
-    rounded = [float(f"{weight:.{_WEIGHT_DIGITS}g}") for weight in weights]
-    pairs: list[list[float | int]] = []
-    for weight in rounded:
-        if pairs and pairs[-1][0] == weight:
-            pairs[-1][1] += 1
-        else:
-            pairs.append([weight, 1])
-    return pairs
-
-
 # ---- checking a point
 
 _POINT_KEYS = (
@@ -257,6 +241,7 @@ def _point(data: Any, where: str) -> Point:
     if data["rehearsed"] is not None:
         raise ValueError(f"{where}.rehearsed must be null, not {shown(data['rehearsed'])}")
     _check_limits(data["limits"], f"{where}.limits")
+    _check_within(data, where)
     _check_witness(data["witness"], f"{where}.witness")
     _check_weights(data["weights"], f"{where}.weights", study.candidates)
     return Point(data, study)
@@ -307,13 +292,26 @@ def _check_limits(data: Any, where: str) -> None:
             _check_fdp(data[key], f"{where}.{key}")
 
 
+def _check_within(data: dict[str, Any], where: str) -> None:
+    """Refuse a prediction below the limit of its own penalty, or where that has none."""
+    key = data["penalty"]["family"].replace("-", "_")
+    fdp, lowest = data["predicted"]["fdp"], data["limits"][key]
+    if lowest is None or fdp < lowest:
+        least = "null" if lowest is None else shown(lowest)
+        raise ValueError(
+            f"{where}.predicted.fdp must be at least limits.{key} ({least}), not {shown(fdp)}"
+        )
+
+
 def _check_witness(data: Any, where: str) -> None:
     check_keys(data, where, _WITNESS_KEYS)
-    for i, atom in enumerate(check_list(data["law"], f"{where}.law", 1, 3)):
+    law = check_list(data["law"], f"{where}.law", 1, 3)
+    for i, atom in enumerate(law):
         check_keys(atom, f"{where}.law[{i}]", ("size", "share"))
         if atom["size"] not in (VANISHES, OUTGROWS):
             SIZE_IN_TAU.check(atom["size"], f"{where}.law[{i}].size")
         SHARE.check(atom["share"], f"{where}.law[{i}].share")
+    check_shares([atom["share"] for atom in law], f"{where}.law")
     RISK.check(data["risk"], f"{where}.risk")
     SLOPE.check(data["slope"], f"{where}.slope")
     check_text(data["reason"], f"{where}.reason", NOTE_LENGTH)
@@ -326,7 +324,7 @@ def _check_weights(data: Any, where: str, candidates: int) -> None:
     check_keys(data, where, ("unit", "normalised"))
     _check_word(data["unit"], f"{where}.unit", ("tau",))
     where += ".normalised"
-    pairs = check_list(data["normalised"], where, 1, candidates)
+    pairs = check_list(data["normalised"], where, 1, MOST_RUNS)
     last, total = math.inf, 0
     for i, pair in enumerate(pairs):
         check_list(pair, f"{where}[{i}]", 2, 2)

@@ -32,6 +32,7 @@ __all__ = [
     "Study",
     "Target",
     "check_actives",
+    "check_shares",
     "load_study",
     "study_from",
 ]
@@ -171,14 +172,19 @@ def check_actives(actives: int, candidates: int, at: str = "") -> None:
         )
 
 
+def check_shares(shares: list[float], where: str) -> None:
+    """Refuse shares that do not sum to 1."""
+    total = math.fsum(shares)
+    if abs(total - 1.0) > _SHARE_SLACK:
+        raise ValueError(f"{where} must have shares that sum to 1, not {total:.10g}")
+
+
 def _effects(data: Any, where: str) -> tuple[Effect | Spread, ...]:
     effects = tuple(
         _effect(entry, f"{where}[{i}]")
         for i, entry in enumerate(check_list(data, where, 1, MOST_EFFECTS))
     )
-    total = math.fsum(effect.share for effect in effects)
-    if abs(total - 1.0) > _SHARE_SLACK:
-        raise ValueError(f"{where} must have shares that sum to 1, not {total:.10g}")
+    check_shares([effect.share for effect in effects], where)
     return effects
 
 

@@ -1,5 +1,6 @@
 """The command: answers, exit codes, and one line for what is wrong."""
 
+import io
 import json
 import os
 import re
@@ -161,6 +162,8 @@ def test_the_target_of_a_file_counts_unless_tpps_are_given(run, tmp_path):
             ["limits", str(ROOT)],
             f"{re.escape(str(ROOT))} must be a readable file: Is a directory",
         ),
+        ([""], "FILE must be the name of a file, not ''"),
+        (["limits", ""], "FILE must be the name of a file, not ''"),
         (["limits", "two\nlines"], "two lines must be a readable file: No such file"),
         (["shortlist", "check", "none.json"], "none.json must be a readable file: No such"),
         (["shortlist", "check", str(ROOT)], "must be a readable file: Is a directory"),
@@ -262,6 +265,24 @@ def test_shortlist_check_counts_in_words(run, tmp_path):
         file = tmp_path / f"{count}.json"
         file.write_text(dump_shortlist(demo_points()[:count]), encoding="utf-8")
         assert run("shortlist", "check", str(file)) == (0, f"{file}: sound, {words}\n", "")
+
+
+def test_a_file_name_that_the_output_cannot_hold_is_escaped(tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+    points = dump_shortlist(demo_points())
+    for encoding, name, shown in (
+        ("ascii", "r\xe9serve.json", rb"r\xe9serve.json"),
+        ("utf-8", "r\xe9serve.json", "r\xe9serve.json".encode()),
+        ("utf-8", "\udcff.json", rb"\udcff.json"),  # a byte that is not UTF-8
+    ):
+        try:
+            Path(name).write_text(points, encoding="utf-8")
+        except OSError:  # some file systems hold no such names
+            continue
+        out = io.TextIOWrapper(io.BytesIO(), encoding=encoding)
+        monkeypatch.setattr(sys, "stdout", out)
+        assert main(["shortlist", "check", name]) == 0
+        assert out.buffer.getvalue() == shown + b": sound, 3 points\n"
 
 
 def test_the_dashboard_is_opened_on_a_checked_study(run, monkeypatch):

@@ -12,8 +12,19 @@ from hypothesis import strategies as st
 
 from engine import lasso_boundary, sorted_l1_boundary, two_level_boundary
 from engine.demo import DEMO_STUDY, demo_points
+from engine.files import SHORTLIST_BYTES
 from engine.limits.families import witness
-from engine.shortlist import MOST_POINTS, dump_shortlist, keep, load_shortlist
+from engine.run_lengths import MOST_RUNS
+from engine.shortlist import (
+    MOST_POINTS,
+    NAME_LENGTH,
+    NOTE_LENGTH,
+    Point,
+    dump_shortlist,
+    keep,
+    load_shortlist,
+)
+from engine.study import MOST_EFFECTS, TITLE_LENGTH, Spread, study_from
 
 POINTS = demo_points()
 TEXT = dump_shortlist(POINTS)
@@ -115,6 +126,36 @@ def test_whatever_can_be_kept_comes_back_to_the_byte(penalty, tpp, candidates, r
     assert dump_shortlist(load_shortlist(text)) == text
 
 
+def test_a_point_of_a_billion_candidates_is_kept_as_quickly():
+    study = replace(DEMO_STUDY, runs=3 * 10**8, candidates=10**9, actives=2 * 10**8)
+    pairs = keep(study, "sorted-l1", 0.8).data["weights"]["normalised"]
+    # One weight for each would fill the memory.
+    assert sum(count for _, count in pairs) == 10**9
+    assert len(pairs) <= MOST_RUNS
+
+
+def test_the_largest_shortlist_the_program_makes_can_be_read_again():
+    """Every text as long as it may be and escaped, every number at its longest."""
+    long = "\x01"  # six bytes in JSON
+    effects = (Spread("exponential", 1.2345678901234567e-300, 1 / MOST_EFFECTS),) * MOST_EFFECTS
+    study = replace(
+        DEMO_STUDY,
+        title=long * TITLE_LENGTH,
+        runs=3 * 10**8,
+        candidates=10**9,
+        actives=2 * 10**8,
+        effects=effects,
+    )
+    point = keep(study, "sorted-l1", 0.8, long * NAME_LENGTH, long * NOTE_LENGTH)
+    count = 10**9 // MOST_RUNS
+    pairs = [[float(f"{9.99999 - i / 1000:.5f}e-5"), count] for i in range(MOST_RUNS)]
+    point = Point({**point.data, "weights": {"unit": "tau", "normalised": pairs}}, point.study)
+    text = dump_shortlist((point,) * MOST_POINTS)
+    assert len(text.encode()) <= SHORTLIST_BYTES
+    assert study_from(point.data["study"]) == study
+    assert load_shortlist(dump_shortlist((point,))) == (point,)
+
+
 def test_no_points_are_a_shortlist():
     assert load_shortlist(dump_shortlist(())) == ()
 
@@ -211,7 +252,7 @@ def broken(change):
         ),
         (
             lambda p: p["weights"].update(normalised=[]),
-            r"weights.normalised must have 1 to 2000 entries, not 0$",
+            rf"weights.normalised must have 1 to {MOST_RUNS} entries, not 0$",
         ),
         (
             lambda p: p.update(weights=None),
@@ -272,6 +313,15 @@ def broken(change):
         ),
         (lambda p: p["predicted"].update(tpp=0), r"predicted.tpp must be .*, not 0$"),
         (lambda p: p["predicted"].update(fdp=1), r"predicted.fdp must be .* below 1, not 1$"),
+        (
+            lambda p: p["predicted"].update(fdp=0.64),
+            r"^points\[2\].predicted.fdp must be at least limits.sorted_l1 \(0.640283.*\), "
+            r"not 0.64$",
+        ),
+        (
+            lambda p: p["penalty"].update(family="lasso"),
+            r"^points\[2\].predicted.fdp must be at least limits.lasso \(null\), not 0.640",
+        ),
         (lambda p: p["predicted"].update(fdp="0"), r"predicted.fdp must be .*, not '0'$"),
         (lambda p: p["limits"].update(two_level=False), r"two_level must be .*, not False$"),
         (
@@ -285,6 +335,10 @@ def broken(change):
             r"law\[0\].share must be .*, not 0$",
         ),
         (lambda p: p["witness"]["law"][0].update(size=0), r"law\[0\].size must be .*, not 0$"),
+        (
+            lambda p: p["witness"]["law"][0].update(share=0.9),
+            r"^points\[2\].witness.law must have shares that sum to 1, not 0.9$",
+        ),
         (lambda p: p["witness"].update(risk=-1), r"witness.risk must be .*, not -1$"),
         (lambda p: p["witness"].update(slope=1.1), r"witness.slope must be .*, not 1.1$"),
         (
@@ -313,9 +367,9 @@ def test_files_of_another_kind():
     with pytest.raises(ValueError, match=r"^points\[0\] must be an object, not 3$"):
         load_shortlist('{"schema": "sparsereach/shortlist/1", "points": [3]}')
     with pytest.raises(
-        ValueError, match="^shortlist file must be at most 10 MB, not 10.000001"
+        ValueError, match="^shortlist file must be at most 15 MB, not 15.000001"
     ):
-        load_shortlist(b" " * 10_000_001)
+        load_shortlist(b" " * 15_000_001)
     with pytest.raises(ValueError, match="^'name' must be given once, not twice"):
         load_shortlist(TEXT.replace('"note":', '"name":', 1))
     many = json.dumps({"schema": "sparsereach/shortlist/1", "points": [{}] * (MOST_POINTS + 1)})
@@ -324,8 +378,10 @@ def test_files_of_another_kind():
 
 
 def test_a_predicted_fdp_may_round_to_zero_though_no_target_may():
-    text = broken(lambda p: p["predicted"].update(fdp=0))
-    assert load_shortlist(text)[2].fdp == 0.0
+    def round_off(point):
+        point["predicted"]["fdp"] = point["limits"]["sorted_l1"] = 0
+
+    assert load_shortlist(broken(round_off))[2].fdp == 0.0
 
 
 def test_renaming_leaves_the_kept_point_alone():
