@@ -9,6 +9,8 @@ function open_page(tab) {
     other.tabIndex = chosen ? 0 : -1
     document.getElementById(other.getAttribute("aria-controls")).hidden = !chosen
   }
+  const hash = tab === tabs[0] ? "" : `#${tab.getAttribute("aria-controls")}`
+  history.replaceState(null, "", location.pathname + location.search + hash)
   window.dispatchEvent(new Event("resize"))
 }
 for (const [i, tab] of tabs.entries()) {
@@ -21,7 +23,10 @@ for (const [i, tab] of tabs.entries()) {
     next.focus()
   })
 }
-open_page(tabs[0])
+// The open page stands after the # of the address.
+const named = () => tabs.find((tab) => `#${tab.getAttribute("aria-controls")}` === location.hash)
+open_page(named() ?? tabs[0])
+window.addEventListener("hashchange", () => open_page(named() ?? tabs[0]))
 
 const planes = document.querySelector(".planes")
 planes.dataset.plane = "tradeoff"

@@ -11,6 +11,7 @@ from engine import (
     power_limit,
 )
 from engine.limits.atlas import Atlas
+from engine.limits.contours import Contours
 from engine.limits.families import FAMILIES
 from engine.limits.lasso_curve import lasso_curve
 from engine.limits.two_level_closed_form import beyond_limit
@@ -19,12 +20,14 @@ from engine.normal import Array
 __all__ = [
     "SEARCHED",
     "Curves",
+    "Needs",
     "Reach",
     "Target",
     "exact",
     "exact_curves",
     "exact_reach",
     "swift_curves",
+    "swift_needs",
     "swift_reach",
 ]
 
@@ -56,6 +59,25 @@ class Curves:
     tpp: Array
     fdp: dict[str, Array]
     exact: bool
+
+
+@dataclass(frozen=True)
+class Needs:
+    """The studies that can meet one target, drawn.
+
+    Attributes
+    ----------
+    sparsity : ndarray
+        Rising, up to that from which picking at random does.
+    ratio : dict of str to ndarray
+        By penalty, the least sampling ratio there.
+    random_sparsity : float
+        From here up picking at random meets the target.
+    """
+
+    sparsity: Array
+    ratio: dict[str, Array]
+    random_sparsity: float
 
 
 @dataclass(frozen=True)
@@ -191,6 +213,12 @@ def exact_curves(sampling_ratio: float, sparsity: float) -> Curves:
         parts = zip(sides, np.split(nodes, [split]), np.split(at_nodes, [split]), strict=True)
         fdp[key] = np.concatenate([np.interp(*part) for part in parts if len(part[0])])
     return Curves(swift.tpp, fdp, exact=True)
+
+
+def swift_needs(tpp: float, fdp: float, contours: Contours) -> Needs:
+    """Return the studies that can meet a target, for drawing."""
+    sparsity, ratio = contours.lines(tpp, fdp)
+    return Needs(sparsity, ratio, 1.0 - fdp)
 
 
 def _nodes(u_star: float) -> tuple[Array, Array]:

@@ -5,8 +5,9 @@ from functools import lru_cache
 from importlib import resources
 
 from engine.limits.atlas import Atlas, load_atlas
+from engine.limits.contours import Contours, contours_from
 
-__all__ = ["asset", "ready_atlas"]
+__all__ = ["asset", "ready_atlas", "ready_contours"]
 
 
 def asset(name: str) -> bytes:
@@ -24,3 +25,10 @@ def ready_atlas() -> Atlas | None:
             f"sparsereach: no ready atlas, values follow more slowly: {error}", file=sys.stderr
         )
         return None
+
+
+@lru_cache(maxsize=1)
+def ready_contours() -> Contours | None:
+    """Return the table that contours are drawn from: about half a second, once."""
+    atlas = ready_atlas()
+    return None if atlas is None else contours_from(atlas)

@@ -13,6 +13,7 @@ from tornado.httputil import HTTPHeaders, HTTPServerRequest
 from tornado.web import OutputTransform
 
 from app.evaluation import start_workers
+from app.ready import ready_contours
 from app.views.shell import page
 from engine.study import Study
 
@@ -63,6 +64,7 @@ def serve(study: Study | None, port: int | None = None, browser: bool = True) ->
     """
     quicken_sockets()
     start_workers()
+    ready_contours()  # before the first page asks for it
     try:
         server = _listen(study, port)
     except OSError as error:

@@ -5,7 +5,6 @@ checked as a whole before any of it is taken; a bad one leaves everything as it 
 `problem`.
 """
 
-import base64
 import dataclasses
 import math
 from typing import Any
@@ -13,14 +12,18 @@ from typing import Any
 import param
 
 from app.evaluation import Evaluate
-from app.reach import Curves, Reach, Target, swift_curves, swift_reach
+from app.kept import Kept, Mark, marks
+from app.reach import Curves, Needs, Reach, Target, swift_curves, swift_needs, swift_reach
 from app.ready import asset
-from app.words import computed, typed
-from engine.files import SHORTLIST_BYTES, STUDY_BYTES
+from app.siblings import Siblings, siblings
+from app.upload import uploaded
+from app.words import typed
+from engine.files import STUDY_BYTES
 from engine.limits.atlas import Atlas
+from engine.limits.contours import Contours
 from engine.limits.families import FAMILIES
+from engine.limits.nearest import KEEPING, reachable_tpp
 from engine.quantities import QUANTITIES, SAMPLING_RATIO, SPARSITY
-from engine.shortlist import MOST_POINTS, Point, dump_shortlist, keep, load_shortlist
 from engine.study import (
     TITLE_LENGTH,
     Effect,
@@ -30,7 +33,7 @@ from engine.study import (
 )
 from engine.study import Target as StudyTarget
 
-__all__ = ["Problem", "Session", "point_letter"]
+__all__ = ["Problem", "Session"]
 
 
 @dataclasses.dataclass(frozen=True)
@@ -70,22 +73,30 @@ class Session(param.Parameterized):
     shown = param.Parameter(default=tuple(FAMILIES), doc="Penalties whose curves are drawn.")
     hatched = param.String(default="lasso", doc="The penalty whose closed region is hatched.")
     kept_as = param.String(default="sorted-l1", doc="The penalty that a point is kept for.")
+    keeping = param.String(default="tpp", doc="What is kept of a target out of reach.")
     theme = param.String(default="light")
 
     problem = param.Parameter(default=None, doc="What is wrong with the last change, or None.")
     accepted = param.Integer(default=0, doc="Rises when a change was accepted.")
-    notice = param.String(doc="What the last verb did.")
     reach = param.ClassSelector(default=None, class_=Reach, allow_None=True)
     curves = param.ClassSelector(default=None, class_=Curves, allow_None=True)
-    points = param.Parameter(default=())
+    needs = param.ClassSelector(default=None, class_=Needs, allow_None=True)
+    siblings = param.ClassSelector(default=None, class_=Siblings, allow_None=True)
 
-    def __init__(self, evaluate: Evaluate, atlas: Atlas | None = None, **params: Any) -> None:
+    def __init__(
+        self,
+        evaluate: Evaluate,
+        atlas: Atlas | None = None,
+        contours: Contours | None = None,
+        **params: Any,
+    ) -> None:
         super().__init__(**params)
-        self._atlas = atlas
+        self.kept = Kept()
+        self._atlas, self._contours = atlas, contours
         self.typed: frozenset[str] = frozenset()  # fields of the last change that held texts
         self._evaluate = evaluate
         self._belief = dict(_BELIEF)
-        self._before: tuple[Point, ...] | None = None  # the points before the last change
+        self._aim: tuple[float, float] | None = None  # the target that `needs` stands for
 
     # ---- the study and its target
 
@@ -125,7 +136,7 @@ class Session(param.Parameterized):
     def open_file(self, upload: dict[str, Any]) -> None:
         """Open the study file that the browser read, or say what is wrong with it."""
         try:
-            study = load_study(_uploaded(upload, STUDY_BYTES, "study file"))
+            study = load_study(uploaded(upload, STUDY_BYTES, "study file"))
         except ValueError as error:
             self.problem = Problem("file", f"{upload['name']}: {error}")
             return
@@ -149,91 +160,57 @@ class Session(param.Parameterized):
         if penalty in FAMILIES:
             self.hatched = penalty
 
-    def keep_as(self, penalty: str) -> None:
-        """Choose the penalty that a point is kept for: one that has a witness."""
-        if penalty in FAMILIES and FAMILIES[penalty].witness is not None:
-            self.kept_as = penalty
-
     def turn_theme(self) -> None:
         """Change between light and dark."""
         self.theme = "dark" if self.theme == "light" else "light"
 
     # ---- the shortlist
 
+    def keep_as(self, penalty: str) -> None:
+        """Choose the penalty that a point is kept for: one that has a witness."""
+        if penalty in FAMILIES and FAMILIES[penalty].witness is not None:
+            self.kept_as = penalty
+
+    def when_out(self, keeping: str) -> None:
+        """Choose what is kept of a target out of reach."""
+        if keeping in KEEPING:
+            self.keeping = keeping
+
     def cannot_keep(self) -> str:
-        """Why the penalty to keep has no point at the target's TPP; empty when it has one."""
+        """Why there is no point to keep; empty when there is one."""
         if self.reach is None:
             return "runs, candidates and actives come first"
-        if self.kept_as == "lasso" and math.isnan(self.reach.lowest["lasso"]):
+        if self.keeping == "tpp" and math.isnan(self.reach.lowest[self.kept_as]):
             return f"no lasso has TPP {typed(self.tpp)}: its power limit is lower"
         return ""
 
     def keep_point(self) -> None:
-        """Keep the point of lowest FDP that the penalty has at the target's TPP."""
+        """Keep the point that the penalty has at the target, or that stands in for it."""
         study = self.study()
-        if study is None or self.cannot_keep():
-            return
-        if len(self.points) >= MOST_POINTS:
-            self.notice = f"A shortlist holds at most {MOST_POINTS} points."
-            return
-        label = FAMILIES[self.kept_as].label
-        name = f"{label[0].upper()}{label[1:]} at TPP {typed(self.tpp)}"
-        point = keep(study, self.kept_as, self.tpp, name)
-        letter = point_letter(len(self.points))
-        notice = (
-            f"Kept as {letter}: {label}, TPP {typed(point.tpp)}, FDP {computed(point.fdp)}."
-        )
-        self._set_points((*self.points, point), notice)
+        if study is not None and not self.cannot_keep():
+            ratios = (study.sampling_ratio, study.sparsity)
+            tpp = reachable_tpp(self.kept_as, self.tpp, self.fdp, *ratios, self.keeping)
+            self.kept.add(study, self.kept_as, tpp)
 
-    def remove(self, index: int) -> None:
-        """Remove a kept point."""
-        if not 0 <= index < len(self.points):
-            return
-        rest = self.points[:index] + self.points[index + 1 :]
-        self._set_points(rest, f"{self.points[index].name} removed.")
-
-    def undo(self) -> None:
-        """Take the last change of the shortlist back."""
-        if self._before is not None:
-            self.param.update(points=self._before, notice="")
-            self._before = None
+    def open_point(self, index: int) -> None:
+        """Bring back the study, target and penalty of a kept point."""
+        if 0 <= index < len(self.kept.points):
+            point = self.kept.points[index]
+            self.keep_as(point.penalty)
+            self.open_study(point.study)
 
     def import_points(self, upload: dict[str, Any]) -> None:
-        """Add the points of the shortlist file that the browser read: all of them or none."""
+        """Add the points of the shortlist file that the browser read, or say what is wrong."""
         try:
-            new = load_shortlist(_uploaded(upload, SHORTLIST_BYTES, "shortlist file"))
-            total = len(self.points) + len(new)
-            if total > MOST_POINTS:
-                raise ValueError(f"points must be at most {MOST_POINTS} in all, not {total}")
+            self.kept.read(upload)
         except ValueError as error:
             self.problem = Problem("file", f"{upload['name']}: {error}")
-            return
-        added = [point for point in new if point not in self.points]
-        same = len(new) - len(added)
-        notice = f"{len(added)} added" + (f", {same} already there." if same else ".")
-        self.problem = None
-        self._set_points((*self.points, *added), notice)
+        else:
+            self.problem = None
 
-    def exported(self) -> str:
-        """Return the text of the shortlist's file."""
-        return dump_shortlist(self.points)
-
-    def kept_marks(self) -> list[tuple[str, float, float, float]]:
-        """Return letter, TPP, FDP and target FDP of the points kept on the study as it stands.
-
-        The target is the point's own FDP where that reaches it: then no stem joins the two.
-        """
-        marks = []
-        for i, point in enumerate(self.points):
-            kept = (point.study.sampling_ratio, point.study.sparsity)
-            if self.reach is not None and kept == self.reach.study_ratios:
-                target = point.study.target
-                missed = (
-                    target is not None and target.tpp == point.tpp and target.fdp < point.fdp
-                )
-                aimed = target.fdp if missed else point.fdp
-                marks.append((point_letter(i), point.tpp, point.fdp, aimed))
-        return marks
+    def marks(self) -> list[Mark]:
+        """Return the marks of the points kept on the study as it stands."""
+        return [] if self.reach is None else marks(self.kept.points, self.reach.study_ratios)
 
     # ---- workings
 
@@ -257,46 +234,35 @@ class Session(param.Parameterized):
         after = {
             name: values.get(name, getattr(self, name)) for name in (*_COUNTS, "tpp", "fdp")
         }
-        changes: dict[str, Any] = {"problem": None, "notice": ""}
+        changes: dict[str, Any] = {"problem": None}
         target: Target | None = None if None in after.values() else tuple(after.values())
         if target is not None:
             changes |= self._answer(target)
         self.param.update(**values, **changes, accepted=self.accepted + 1)
+        self.kept.notice = ""
         if target is not None:
             self._evaluate(target, self._refine)
 
     def _answer(self, target: Target) -> dict[str, Any]:
         """Return what can be shown at once: curves without a search, and what they tell."""
-        runs, candidates, actives = target[:3]
+        runs, candidates, actives, tpp, fdp = target
         ratios = (runs / candidates, actives / candidates)
-        if self.reach is not None and self.reach.study_ratios == ratios:
-            return {"reach": swift_reach(target, self.curves)}
-        curves = swift_curves(*ratios, self._atlas)
-        return {"reach": swift_reach(target, curves), "curves": curves}
-
-    def _set_points(self, points: tuple[Point, ...], notice: str) -> None:
-        self._before = self.points
-        self.param.update(points=points, notice=notice)
+        answer: dict[str, Any] = {}
+        if self._contours is not None and (self.needs is None or (tpp, fdp) != self._aim):
+            self._aim = (tpp, fdp)
+            answer["needs"] = swift_needs(tpp, fdp, self._contours)
+        curves = self.curves
+        if self.reach is None or self.reach.study_ratios != ratios:
+            answer["curves"] = curves = swift_curves(*ratios, self._atlas)
+            if self._atlas is not None:
+                answer["siblings"] = siblings(*ratios, self._atlas)
+        return {**answer, "reach": swift_reach(target, curves)}
 
     def _refine(self, reach: Reach, curves: Curves) -> None:
         changes: dict[str, Any] = {"reach": reach}
         if not self.curves.exact:
             changes["curves"] = curves
         self.param.update(**changes)
-
-
-def point_letter(index: int) -> str:
-    """Name the kept points A to Z, then A2, B2 and so on."""
-    turn, place = divmod(index, 26)
-    return chr(ord("A") + place) + (str(turn + 1) if turn else "")
-
-
-def _uploaded(upload: dict[str, Any], limit: int, what: str) -> bytes:
-    """The bytes of an upload; one that the browser found too large arrives without them."""
-    if upload["size"] > limit:
-        most, size = f"{limit / 1e6:.0f} MB", f"{upload['size'] / 1e6:.9g} MB"
-        raise ValueError(f"{what} must be at most {most}, not {size}")
-    return base64.b64decode(upload["content"])
 
 
 def _number(name: str, value: Any) -> float:

@@ -7,7 +7,9 @@ A value that is not exactly 0 or 1 is never shown as 0 or 1; a value that does n
 
 import math
 
-__all__ = ["NONE", "computed", "count", "ratio", "significant", "typed"]
+from engine.limits.families import FAMILIES
+
+__all__ = ["NONE", "computed", "count", "ratio", "short_name", "significant", "typed"]
 
 NONE = "none"
 _GROUP = "\u202f"  # narrow no-break space
@@ -53,3 +55,8 @@ def significant(value: float) -> str:
         digits = 2 if value == 0.0 else max(0, 2 - math.floor(math.log10(abs(value))))
         return f"{value:.{digits}f}"
     return f"{value:.2e}"
+
+
+def short_name(penalty: str) -> str:
+    """Return a penalty's name where room is short: beside the others that says enough."""
+    return FAMILIES[penalty].label.rpartition(", ")[2]

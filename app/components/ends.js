@@ -9,6 +9,11 @@ export function render({model, el}) {
   root.className = "names"
   el.appendChild(root)
 
+  const fill = (element, {value, pending}) => {
+    element.textContent = value
+    if (pending) element.appendChild(document.createElement("i")).className = "pending"
+    element.classList.toggle("none", value === "none")
+  }
   const paint = () => {
     const {rows, heading, counts} = model
     root.innerHTML = `
@@ -22,10 +27,7 @@ export function render({model, el}) {
       item.className = `row ${row.key}`
       item.innerHTML = `<i class="sample"></i><dt></dt><dd></dd>`
       item.querySelector("dt").textContent = row.name
-      const value = item.querySelector("dd")
-      value.textContent = row.value
-      if (row.pending) value.appendChild(document.createElement("i")).className = "pending"
-      item.classList.toggle("none", row.value === "none")
+      fill(item.querySelector("dd"), row)
       list.appendChild(item)
     }
     const box = root.querySelector(".counts")
@@ -75,6 +77,25 @@ export function render({model, el}) {
       svg.appendChild(path)
     }
   }
+  // While the pointer is over a picture along TPP, the column tells the values there, as read off
+  // the curves: two digits, where the third would not be certain.
+  const point = (event) => {
+    const at = event.detail
+    root.classList.toggle("pointed", at !== null)
+    const heading = root.querySelector(".block .heading")
+    heading.textContent = at === null ? model.heading : `Lowest FDP here,\nat TPP ${at.tpp.toFixed(2)}`
+    for (const [i, item] of [...root.querySelectorAll(".block .row")].entries()) {
+      const row = model.rows[i]
+      fill(item.querySelector("dd"), at === null ? row : {...row, ...read(at.values[row.key])})
+    }
+  }
+  const read = (value) => {
+    if (!Number.isFinite(value)) return {value: "none", pending: false}
+    return {value: value > 0 && value < 0.005 ? "<0.01" : value.toFixed(2), pending: value >= 0.005}
+  }
+  window.addEventListener("sparsereach:pointer", point)
+  model.on("remove", () => window.removeEventListener("sparsereach:pointer", point))
+
   const settle = new ResizeObserver(arrange)
   settle.observe(el.getRootNode().host)
   model.on(["rows", "heading", "counts"], paint)

@@ -7,7 +7,7 @@ import panel as pn
 import param
 
 from app.components.styles import SHARED
-from app.plots.canvas import FRAME_BOTTOM, FRAME_TOP
+from app.plots.canvas import BORDERS
 
 __all__ = ["Ends"]
 
@@ -18,8 +18,8 @@ class Ends(pn.custom.JSComponent):
     heading = param.String()
     rows = param.List(doc="Dicts of key, name, value (text) and end (FDP at TPP 1, or None).")
     counts = param.List(doc="Pairs of name and text; the first one is the heading.")
-    top = param.Number(default=FRAME_TOP)
-    bottom = param.Number(default=FRAME_BOTTOM)
+    top = param.Number(default=BORDERS.top)
+    bottom = param.Number(default=BORDERS.bottom)
 
     _esm = Path(__file__).parent / "ends.js"
     _stylesheets: ClassVar[list[str]] = [

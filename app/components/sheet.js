@@ -53,6 +53,22 @@ export function render({model, el}) {
       link.click()
       setTimeout(() => URL.revokeObjectURL(link.href), 10000)
     },
+    // The address follows the session, so that a reload or a copied link reopens it.
+    address({query}) {
+      history.replaceState(null, "", `?${query}${location.hash}`)
+    },
+    async copy({query}) {
+      orders.address({query})
+      const button = root.querySelector("[data-do=link]")
+      const words = button.textContent
+      try {
+        await navigator.clipboard.writeText(location.href)
+        button.textContent = "Copied"
+      } catch {
+        window.prompt("The link:", location.href)
+      }
+      setTimeout(() => { button.textContent = words }, 1600)
+    },
     theme({name}) {
       document.documentElement.dataset.theme = name
     },

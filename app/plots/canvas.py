@@ -3,7 +3,8 @@
 A picture builds its figure and its sources once; later changes only assign `source.data`.
 """
 
-from typing import Any
+from collections.abc import Iterable
+from typing import Any, NamedTuple
 
 from bokeh.core.properties import value
 from bokeh.models import ColumnDataSource, GlyphRenderer, NumeralTickFormatter
@@ -12,10 +13,28 @@ from bokeh.plotting import figure
 
 from app.theme import CANVAS_FONT, STROKES, THEMES, Theme
 
-__all__ = ["FRAME_BOTTOM", "FRAME_LEFT", "FRAME_RIGHT", "FRAME_TOP", "Canvas", "put"]
+__all__ = ["BORDERS", "Borders", "Canvas", "put", "word_columns"]
 
-# Fixed borders let the page place its own words beside the frame.
-FRAME_TOP, FRAME_BOTTOM, FRAME_LEFT, FRAME_RIGHT = 12, 46, 40, 12
+
+class Borders(NamedTuple):
+    """Pixels around a frame; being fixed, they let the page place its own things over it."""
+
+    top: int
+    bottom: int
+    left: int
+    right: int
+
+
+BORDERS = Borders(12, 46, 40, 12)
+
+Word = tuple[float, float, str, float, float, str]
+
+
+def word_columns(words: Iterable[Word] = ()) -> dict[str, list[Any]]:
+    """Return columns for `Canvas.words`: x, y, text, pixels right and down, alignment."""
+    columns = list(zip(*words, strict=True)) or [()] * 6
+    names = ("x", "y", "text", "dx", "dy", "align")
+    return dict(zip(names, map(list, columns), strict=True))
 
 
 def put(source: ColumnDataSource, data: dict[str, list[Any]]) -> None:
@@ -37,6 +56,8 @@ class Canvas:
         Axis title; the page writes the y axis' title above the frame.
     x_ticks, y_ticks : sequence of float, optional
         Fixed ticks.
+    borders : Borders
+        Room around the frame.
     """
 
     def __init__(
@@ -47,6 +68,7 @@ class Canvas:
         x_label: str,
         x_ticks: list[float] | None = None,
         y_ticks: list[float] | None = None,
+        borders: Borders = BORDERS,
     ) -> None:
         self._theme = THEMES["light"]
         self._tokens: dict[tuple[str, str], tuple[Any, str]] = {}
@@ -58,10 +80,10 @@ class Canvas:
             sizing_mode="stretch_both",
             toolbar_location=None,
             tools="",
-            min_border_top=FRAME_TOP,
-            min_border_bottom=FRAME_BOTTOM,
-            min_border_left=FRAME_LEFT,
-            min_border_right=FRAME_RIGHT,
+            min_border_top=borders.top,
+            min_border_bottom=borders.bottom,
+            min_border_left=borders.left,
+            min_border_right=borders.right,
         )
         fig.toolbar.autohide = True
         self._style_axes(x_ticks, y_ticks)
@@ -110,15 +132,50 @@ class Canvas:
         self.token(words.glyph, text_color="ink", background_fill_color="surface")
         return words
 
-    def handle(self, source: ColumnDataSource) -> None:
-        """Draw what the user can drag: a yellow core in a ring, with a halo."""
-        fig = self.figure
-        halo = fig.scatter("x", "y", source=source, size=33, fill_alpha=0.22, line_color=None)
-        outer = fig.scatter("x", "y", source=source, size=21, line_color=None)
-        core = fig.scatter("x", "y", source=source, size=16, line_width=2.6, name="handle")
-        self.token(halo.glyph, fill_color="accent")
+    def dot(self, source: ColumnDataSource, size: float) -> None:
+        """Draw where a handle stands: a yellow core in a ring."""
+        outer = self.figure.scatter("x", "y", source=source, size=size, line_color=None)
+        core = self.figure.scatter("x", "y", source=source, size=0.76 * size, line_width=2)
         self.token(outer.glyph, fill_color="accent")
         self.token(core.glyph, fill_color="accent", line_color="ring")
+
+    def kept(self, source: ColumnDataSource) -> None:
+        """Draw kept points: a letter on a disc, and a stem to the target it stands for."""
+        stem = self.figure.segment(
+            "x", "y", "x_target", "y_target", source=source, line_width=1.6
+        )
+        disc = self.figure.text(
+            "x",
+            "y",
+            text="text",
+            x_offset="dx",
+            source=source,
+            text_align="center",
+            text_baseline="middle",
+            text_font=value(CANVAS_FONT),
+            text_font_size="11px",
+            text_font_style="bold",
+            padding=(6, 4),
+            border_radius=10,
+            border_line_width=2,
+        )
+        self.token(stem.glyph, line_color="ink")
+        self.token(
+            disc.glyph,
+            text_color="ink",
+            background_fill_color="surface",
+            border_line_color="ink",
+        )
+
+    def hatch(self, glyph: Any) -> None:
+        """Hatch an area, in a colour still to be set: a penalty cannot get there."""
+        glyph.update(
+            fill_alpha=0.035,
+            hatch_pattern="right_diagonal_line",
+            hatch_scale=11,
+            hatch_weight=0.8,
+            hatch_alpha=0.34,
+        )
 
     def _style_axes(self, x_ticks: list[float] | None, y_ticks: list[float] | None) -> None:
         fig = self.figure

@@ -10,9 +10,11 @@ from markupsafe import Markup
 from app.coalesce import Coalescer
 from app.components.sheet import Sheet
 from app.evaluation import evaluator
-from app.ready import ready_atlas
+from app.link import open_link, query_of
+from app.ready import ready_atlas, ready_contours
 from app.state import Session
 from app.theme import css_variables
+from app.views.answer import AnswerView
 from app.views.reach import ReachView
 from app.views.shortlist import ShortlistView
 from app.views.study import StudyRail
@@ -35,17 +37,23 @@ _MARK = (
 def page(study: Study | None) -> pn.Template:
     """Build the page of a new session, opened on `study`."""
     doc = pn.state.curdoc
-    session = Session(evaluate=evaluator(doc), atlas=ready_atlas())
+    session = Session(evaluator(doc), ready_atlas(), ready_contours())
     inbox = Coalescer(doc, session.propose)
     reach = ReachView(session, inbox)  # first, so that its pictures change first
+    reach.tradeoff.loupe.attach(doc)
     rail = StudyRail(session, inbox)
+    answer = AnswerView(session)
     shortlist = ShortlistView(session)
     frame = _Frame(session)
+    query = {name: values[-1].decode() for name, values in pn.state.session_args.items()}
     if study is not None:
         session.open_study(study)
+    open_link(session, query)
+    frame.follow()
     template = pn.Template((_HERE / "page.html").read_text())
     for name, root in {
-        **frame.roots(), **rail.roots(), **reach.roots(), **shortlist.roots()
+        **frame.roots(), **rail.roots(), **reach.roots(), **answer.roots(),
+        **shortlist.roots(),
     }.items():  # fmt: skip
         template.add_panel(name, root)
     for name, text in _variables(session).items():
@@ -66,7 +74,7 @@ def _variables(session: Session) -> dict[str, str]:
 
 
 class _Frame:
-    """The header: the study's title, and opening another study."""
+    """The header: the study's title, opening another study, and the address as a link."""
 
     def __init__(self, session: Session) -> None:
         self._session = session
@@ -79,9 +87,23 @@ class _Frame:
     def roots(self) -> dict[str, Any]:
         return {"title": self.title, "actions": self.actions}
 
+    def follow(self) -> None:
+        """Keep the address in step with the session, whenever the hand rests."""
+        params = ["reach", "title", "shown", "hatched", "kept_as", "keeping", "keeps_counts",
+                  "theme"]  # fmt: skip
+        self._session.param.watch(self._show_address, params)
+        self._session.kept.param.watch(self._show_address, ["points"])
+
+    def _show_address(self, *_: Any) -> None:
+        reach = self._session.reach
+        if reach is None or reach.exact:
+            self.actions.ask("address", query=query_of(self._session))
+
     def _use(self, data: dict[str, Any]) -> None:
         session = self._session
         match data.get("do"):
+            case "link":
+                self.actions.ask("copy", query=query_of(session))
             case "title":
                 session.rename_study(str(data.get("value", "")))
             case "open":
@@ -105,5 +127,6 @@ class _Frame:
             '<button class="button" data-do="example" data-key="example">Example</button>'
             '<label class="button">Open study<input class="visually-hidden" type="file" '
             'accept=".json,application/json" data-do="open" data-limit="{}" data-key="open">'
-            '</label><button class="button" data-do="theme" data-key="theme">{}</button>'
+            '</label><button class="button" data-do="link" data-key="link">Copy link</button>'
+            '<button class="button" data-do="theme" data-key="theme">{}</button>'
         ).format(STUDY_BYTES, other)

@@ -5,11 +5,12 @@ from typing import Any
 from markupsafe import Markup
 
 from app.components.sheet import Sheet
-from app.state import Session, point_letter
+from app.kept import point_letter
+from app.state import Session
 from app.words import computed, count, ratio, significant, typed
 from engine.files import SHORTLIST_BYTES
 from engine.limits.families import FAMILIES
-from engine.shortlist import LIMIT_KEYS, Point
+from engine.shortlist import LIMIT_KEYS, NAME_LENGTH, Point
 
 __all__ = ["ShortlistView"]
 
@@ -21,7 +22,7 @@ class ShortlistView:
         self._session = session
         self.strip = Sheet("strip", self._use)
         self.table = Sheet("table", self._use)
-        session.param.watch(self._show, ["points"])
+        session.kept.param.watch(self._show, ["points", "notice"])
         self._show()
 
     def roots(self) -> dict[str, Any]:
@@ -31,29 +32,44 @@ class ShortlistView:
     def _use(self, data: dict[str, Any]) -> None:
         session = self._session
         match data.get("do"):
+            case "open":
+                session.open_point(int(data["index"]))
+            case "name":
+                session.kept.rename(int(data["index"]), name=str(data["value"]))
+            case "note":
+                session.kept.rename(int(data["index"]), note=str(data["value"]))
+            case "up":
+                session.kept.move(int(data["index"]), -1)
+            case "down":
+                session.kept.move(int(data["index"]), 1)
             case "remove":
-                session.remove(int(data["index"]))
+                session.kept.remove(int(data["index"]))
+            case "undo":
+                session.kept.undo()
             case "export":
-                self.strip.ask("save", name="shortlist.json", text=session.exported())
+                self.strip.ask("save", name="shortlist.json", text=session.kept.exported())
             case "import":
                 session.import_points(data)
 
     def _show(self, *_: Any) -> None:
-        points = self._session.points
-        files = _files(bool(points))
+        kept = self._session.kept
+        points, files = kept.points, _files(bool(kept.points))
         chips = Markup("").join(_chip(i, point) for i, point in enumerate(points))
         empty = Markup('<span class="empty">Points you keep stand here.</span>')
-        self.strip.html = Markup('<h2>Shortlist</h2><div class="chips">{}</div>{}').format(
-            chips or empty, files
+        told = _notice(kept.notice, "undo")
+        self.strip.html = Markup('<h2>Shortlist</h2><div class="chips">{}</div>{}{}').format(
+            chips or empty, told, files
         )
-        self.table.html = _table(points, files)
+        self.table.html = _table(points, files, kept.notice)
         self.strip.ask("count", kept=len(points))
 
 
 def _chip(index: int, point: Point) -> Markup:
     return Markup(
-        '<div class="chip"><span class="letter">{letter}</span><span><b>{name}</b>'
-        "<small>{family}, TPP {tpp}, FDP {fdp}</small></span>"
+        '<div class="chip"><button class="opens" data-do="open" data-index="{index}" '
+        'data-key="open-{index}" title="Bring its study and target back">'
+        '<span class="letter">{letter}</span><span><b>{name}</b>'
+        "<small>{family}, TPP {tpp}, FDP {fdp}</small></span></button>"
         '<button class="cross" data-do="remove" data-index="{index}" data-key="remove-{index}" '
         'aria-label="Remove {letter}">×</button></div>'
     ).format(
@@ -64,6 +80,15 @@ def _chip(index: int, point: Point) -> Markup:
         fdp=computed(point.fdp),
         index=index,
     )
+
+
+def _notice(text: str, key: str) -> Markup:
+    if not text:
+        return Markup("")
+    return Markup(
+        '<p class="notice" role="status">{} <button data-do="undo" data-key="{}">Undo</button>'
+        "</p>"
+    ).format(text, key)
 
 
 def _files(some: bool) -> Markup:
@@ -83,7 +108,7 @@ _COLUMNS = (
 )  # fmt: skip
 
 
-def _table(points: tuple[Point, ...], files: Markup) -> Markup:
+def _table(points: tuple[Point, ...], files: Markup, notice: str) -> Markup:
     if not points:
         return Markup(
             '<p class="empty">No points yet. On Reach, set a target and press Keep this point; '
@@ -98,8 +123,8 @@ def _table(points: tuple[Point, ...], files: Markup) -> Markup:
         "<table><caption>Kept operating points <small>FDP: the lowest at that TPP for the "
         "penalty kept; then that of every penalty; zero threshold in units of τ</small>"
         "</caption>"
-        '<thead><tr>{}</tr></thead><tbody>{}</tbody></table><p class="files">{}</p>'
-    ).format(heads, rows, files)
+        '<thead><tr>{}</tr></thead><tbody>{}</tbody></table>{}<p class="files">{}</p>'
+    ).format(heads, rows, _notice(notice, "undo-table"), files)
 
 
 def _row(index: int, point: Point) -> Markup:
@@ -108,16 +133,23 @@ def _row(index: int, point: Point) -> Markup:
     numbers += [ratio(study.sampling_ratio), ratio(study.sparsity)]
     limits = [computed(point.limit(key)) for key in (*LIMIT_KEYS, "power_limit")]
     return Markup(
-        '<tr><td class="words"><span class="letter">{letter}</span>'
-        '<button class="cross" data-do="remove" data-index="{index}" '
-        'data-key="remove-row-{index}" aria-label="Remove {letter}">×</button></td>'
-        '<td class="words name"><b>{name}</b><small>{title}</small></td>{numbers}'
+        '<tr><td class="words tools"><button class="opens" data-do="open" data-index="{index}" '
+        'data-key="open-row-{index}" title="Bring its study and target back">'
+        '<span class="letter">{letter}</span></button>{tools}</td>'
+        '<td class="words name"><input data-do="name" data-index="{index}" '
+        'data-key="name-{index}" value="{name}" maxlength="{longest}" aria-label="Name of '
+        '{letter}"><small>{title}</small><input class="note" data-do="note" '
+        'data-index="{index}" data-key="note-{index}" value="{note}" placeholder="Note" '
+        'aria-label="Note on {letter}"></td>{numbers}'
         '<td class="words"><i class="sample {key}"></i>{label}</td><td>{tpp}</td>'
         "<td><b>{fdp}</b></td>{limits}<td>{threshold}</td>"
         '<td class="words why">{attained}</td></tr>'
     ).format(
         letter=point_letter(index),
+        tools=_tools(index),
         name=point.name,
+        note=point.note,
+        longest=NAME_LENGTH,
         title=study.title,
         numbers=_cells(numbers),
         key=penalty,
@@ -129,6 +161,19 @@ def _row(index: int, point: Point) -> Markup:
         attained="yes" if facts["attained"] else f"approached: {facts['reason']}",
         index=index,
     )
+
+
+def _tools(index: int) -> Markup:
+    letter = point_letter(index)
+    return Markup("").join(
+        Markup(
+            '<button class="cross" data-do="{do}" data-index="{index}" '
+            'data-key="{do}-row-{index}" aria-label="{words} {letter}">{sign}</button>'
+        ).format(do=do, index=index, words=words, letter=letter, sign=sign)
+        for do, words, sign in (
+            ("up", "Move up", "↑"), ("down", "Move down", "↓"), ("remove", "Remove", "×"),
+        )
+    )  # fmt: skip
 
 
 def _cells(texts: list[str]) -> Markup:

@@ -133,6 +133,11 @@ def near_threshold_at_sparsity(eps: float) -> float:
     return math.exp(np.interp(odds, _SPARSITY_TABLE, _LOG_T))
 
 
+def point_at(t: Array) -> tuple[Array, Array]:
+    """Sampling ratio and critical sparsity of the transition at t."""
+    return 2.0 / (2.0 + t * central(t) / density(t)), _sparsity_at(t)
+
+
 def _sparsity_at(t: Array) -> Array:
     # phi and t Phi(-t) nearly cancel for large t; their ratio does not.
     return 2.0 * (1.0 - t * mills(t)) / (2.0 + t * central(t) / density(t))

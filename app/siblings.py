@@ -1,0 +1,38 @@
+"""Sorted L1 on studies that share the sampling ratio, or the sparsity, of the user's."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from engine.limits.atlas import Atlas
+from engine.normal import Array
+
+__all__ = ["RATIOS", "SPARSITIES", "Siblings", "siblings"]
+
+SPARSITIES = (0.05, 0.1, 0.2, 0.35, 0.5)
+RATIOS = (0.1, 0.2, 0.3, 0.5, 0.8)
+
+_TPP = np.linspace(0.0, 1.0, 49)
+
+
+@dataclass(frozen=True)
+class Siblings:
+    """Boundaries along `tpp`, in the order of `SPARSITIES` and of `RATIOS`."""
+
+    tpp: Array
+    by_sparsity: tuple[Array, ...]
+    by_ratio: tuple[Array, ...]
+
+
+def siblings(sampling_ratio: float, sparsity: float, atlas: Atlas) -> Siblings:
+    """Read the boundaries of sorted L1 off the atlas, for drawing."""
+
+    def along(delta: float, eps: float) -> Array:
+        read: Array = np.interp(_TPP, *atlas.curve("sorted-l1", delta, eps))
+        return read
+
+    return Siblings(
+        _TPP,
+        tuple(along(sampling_ratio, eps) for eps in SPARSITIES),
+        tuple(along(delta, sparsity) for delta in RATIOS),
+    )
