@@ -12,6 +12,7 @@ from urllib.parse import urlencode
 from app.kept import made
 from app.state import Problem, Session
 from engine.limits.families import FAMILIES
+from engine.quantities import TPP
 from engine.shortlist import Point
 from engine.study import STUDY_SCHEMA, Study, study_from
 from engine.version import VERSION
@@ -20,6 +21,9 @@ __all__ = ["MOST_LINKED", "open_link", "query_of"]
 
 # Points in a link are made again when it is opened, at some 0.1 seconds each.
 MOST_LINKED = 24
+
+# A link typed by hand may leave out what Reach does not need.
+_ONE_SIZE = '[{"size": 0.2, "share": 1.0}]'
 
 _COUNTS = ("runs", "candidates", "actives")
 
@@ -70,13 +74,15 @@ def open_link(session: Session, parts: Mapping[str, str]) -> None:
 
 
 def _study(parts: Mapping[str, str]) -> Study:
-    data = {
+    data: dict[str, Any] = {
         "schema": STUDY_SCHEMA,
         "title": parts.get("title", ""),
-        **{name: _number(parts.get(name, "")) for name in (*_COUNTS, "noise_sd")},
-        "effects": _json(parts.get("effects", ""), "effects"),
-        "target": {name: _number(parts.get(name, "")) for name in ("tpp", "fdp")},
+        **{name: _number(parts.get(name, "")) for name in _COUNTS},
+        "noise_sd": _number(parts.get("noise_sd", "1")),
+        "effects": _json(parts.get("effects", _ONE_SIZE), "effects"),
     }
+    if "tpp" in parts or "fdp" in parts:
+        data["target"] = {name: _number(parts.get(name, "")) for name in ("tpp", "fdp")}
     return study_from(data)
 
 
@@ -106,7 +112,8 @@ def _point(entry: Any, study: Study | None) -> Point:
     own = ({} if study is None else study.to_dict()) | entry.get("study", {})
     if own.get("target", {}) is None:
         del own["target"]
-    point = made(study_from(own), str(entry.get("as")), entry.get("tpp"))
+    tpp = TPP.check(entry.get("tpp"), "points: tpp")
+    point = made(study_from(own), str(entry.get("as")), tpp)
     return point.renamed(str(entry.get("name", "")), str(entry.get("note", "")))
 
 

@@ -26,6 +26,7 @@ __all__ = [
     "exact",
     "exact_curves",
     "exact_reach",
+    "stand_in",
     "swift_curves",
     "swift_needs",
     "swift_reach",
@@ -213,6 +214,32 @@ def exact_curves(sampling_ratio: float, sparsity: float) -> Curves:
         parts = zip(sides, np.split(nodes, [split]), np.split(at_nodes, [split]), strict=True)
         fdp[key] = np.concatenate([np.interp(*part) for part in parts if len(part[0])])
     return Curves(swift.tpp, fdp, exact=True)
+
+
+def stand_in(
+    curves: Curves, penalty: str, tpp: float, fdp: float, keeping: str
+) -> tuple[float, float] | None:
+    """Read off the curves the point that would be kept for a target out of reach.
+
+    None for a target within reach, and where there is no such point; see
+    `engine.limits.nearest`.
+    """
+    u, q = curves.tpp, curves.fdp[penalty]
+    here = float(np.interp(tpp, u, q))
+    if here <= fdp:
+        return None
+    if keeping == "tpp":
+        return None if math.isnan(here) else (tpp, here)
+    candidates = np.flatnonzero((u <= tpp) & ~np.isnan(q))
+    if keeping == "fdp":
+        last = candidates[q[candidates] <= fdp][-1]
+        following = min(last + 1, candidates[-1])
+        rise = q[following] - q[last]
+        part = (fdp - q[last]) / rise if rise > 0.0 else 0.0
+        return float(u[last] + part * (u[following] - u[last])), fdp
+    away = (u[candidates] - tpp) ** 2 + (q[candidates] - fdp) ** 2
+    nearest = candidates[int(np.argmin(away))]
+    return float(u[nearest]), float(q[nearest])
 
 
 def swift_needs(tpp: float, fdp: float, contours: Contours) -> Needs:

@@ -61,6 +61,7 @@ export function render({model, el}) {
     const place = at(x, y)
     held = {x, y, dx: event.clientX - box.left - place[0], dy: event.clientY - box.top - place[1]}
     knob.setPointerCapture(event.pointerId)
+    knob.focus({preventScroll: true})  // Escape takes the move back
     put($(".ghost"), place)
     $(".ghost").hidden = false
     root.classList.add("held")
@@ -85,10 +86,23 @@ export function render({model, el}) {
     root.classList.remove("held")
     $(".ghost").hidden = true
     model.send_msg({held: false})
+    settle()
     paint()
   }
-  knob.addEventListener("pointerup", release)
-  knob.addEventListener("pointercancel", release)
+  // Where a hand lets go of it, it rests on a whole step.
+  const rest = () => {
+    const {step} = model
+    if (held !== null && step) move(digits(Math.round(x / step) * step), digits(Math.round(y / step) * step))
+    release()
+  }
+  // Answers to earlier moves may still come; until they have, its own place counts.
+  let quiet = 0
+  const settle = () => {
+    quiet = performance.now() + 300
+    setTimeout(take, 310)
+  }
+  knob.addEventListener("pointerup", rest)
+  knob.addEventListener("pointercancel", rest)
 
   // Arrows move by a hundredth of the plane, with Shift by a tenth of that.
   const keys = {ArrowRight: [1, 0], ArrowLeft: [-1, 0], ArrowUp: [0, 1], ArrowDown: [0, -1]}
@@ -106,6 +120,7 @@ export function render({model, el}) {
       digits(x + right_ * part * (x_range.end - x_range.start)),
       digits(y + up_ * part * (y_range.end - y_range.start)),
     )
+    settle()
     event.preventDefault()
   })
   knob.addEventListener("focus", () => {
@@ -115,7 +130,7 @@ export function render({model, el}) {
   knob.addEventListener("blur", () => { root.classList.remove("keys"); paint() })
 
   const take = () => {
-    if (held !== null) return
+    if (held !== null || performance.now() < quiet) return
     const {x: xs, y: ys} = source.data
     x = xs.length ? xs[0] : null
     y = ys.length ? ys[0] : null

@@ -31,14 +31,17 @@ class Grip(pn.custom.JSComponent):
         What its place means.
     on_move : callable
         Receives (x, y) wherever the hand or the keys take it.
-    on_hold : callable
+    on_hold : callable, optional
         Receives True when a hand takes it and False when it lets go.
+    step : float
+        Where a hand lets go of it, it rests on whole steps.
     """
 
     figure = param.String()
     source = param.String()
     label = param.String()
     names = param.List(doc="Labels of x and y.")
+    step = param.Number(default=0.0, doc="It rests on whole steps of both; 0 for anywhere.")
     bounds = param.List(doc="Lowest and highest x, lowest and highest y.")
     borders = param.List(default=list(BORDERS), doc="Pixels around the figure's frame.")
 
@@ -56,9 +59,11 @@ class Grip(pn.custom.JSComponent):
         across: Quantity,
         up: Quantity,
         on_move: Callable[[float, float], None],
-        on_hold: Callable[[bool], None],
+        on_hold: Callable[[bool], None] | None = None,
+        step: float = 0.0,
     ) -> None:
         super().__init__(
+            step=step,
             label=label,
             figure=figure,
             source=source,
@@ -71,7 +76,7 @@ class Grip(pn.custom.JSComponent):
         when_loaded(partial(self._use, data))
 
     def _use(self, data: dict[str, Any]) -> None:
-        if "held" in data:
-            self._on_hold(bool(data["held"]))
-        else:
+        if "held" not in data:
             self._on_move(float(data["x"]), float(data["y"]))
+        elif self._on_hold is not None:
+            self._on_hold(bool(data["held"]))

@@ -36,11 +36,12 @@ class Loupe:
         self, curves: ColumnDataSource, target: ColumnDataSource, kept: ColumnDataSource
     ) -> None:
         self.canvas = Canvas(
-            "loupe", (0.0, _WIDTH), (0.0, _HEIGHT), "", [], [], Borders(0, 0, 0, 0)
+            "loupe-plane", (0.0, _WIDTH), (0.0, _HEIGHT), "", [], [], Borders(0, 0, 0, 0)
         )
         self.box = ColumnDataSource(
-            {"left": [], "right": [], "bottom": [], "top": []}, name="loupe-box"
+            {"left": [], "right": [], "bottom": [], "top": [], "side": []}, name="loupe-box"
         )
+        self.side = "right"
         self.crossings = ColumnDataSource({"x": [], "y": []}, name="crossings")
         self.names = ColumnDataSource(word_columns())
         self._draw(curves, target, kept)
@@ -64,7 +65,10 @@ class Loupe:
         left = min(max(reach.tpp - 0.5 * _WIDTH, 0.0), 1.0 - _WIDTH)
         bottom = min(max(middle - 0.5 * _HEIGHT, -0.01), 1.0 - _HEIGHT)
         right, top = left + _WIDTH, bottom + _HEIGHT
-        box = {"left": [left], "right": [right], "bottom": [bottom], "top": [top]}
+        # It stands in the right bottom corner, unless its box does.
+        self.side = "left" if right > 0.6 and bottom < 0.5 else "right"
+        box = {"left": [left], "right": [right], "bottom": [bottom], "top": [top],
+               "side": [self.side]}  # fmt: skip
         put(self.box, box if values else {name: [] for name in box})
         put(self.crossings, {"x": [reach.tpp] * len(values), "y": values})
         put(self.names, word_columns(_names(reach.tpp, at_target)))

@@ -1,10 +1,11 @@
 """The phase plane: the study, and which studies can meet the target, per penalty."""
 
 from functools import lru_cache
+from pathlib import Path
 from typing import Any
 
 import numpy as np
-from bokeh.models import ColumnDataSource
+from bokeh.models import ColumnDataSource, CustomJS, Span
 
 from app.plots.boundaries import DRAWN
 from app.plots.canvas import Canvas, Word, put, word_columns
@@ -21,6 +22,8 @@ _RATIO_STRETCHES = (0.6, 1.25, 2.5, 6.0, 24.0)
 _SPARSITY_STRETCHES = (0.02, 0.1, 0.4, 1.0)
 _ROOM = 0.85
 
+_POINT = (Path(__file__).parent / "phase.js").read_text()
+
 # Lines of equal power limit; the plane is a shade darker above each.
 _LIMITS = (0.8, 0.6, 0.4, 0.2)
 
@@ -35,7 +38,7 @@ class PhasePlane:
             (0.0, _SPARSITY_STRETCHES[2]),
             "Sampling ratio, runs per candidate",
         )
-        self.held = False  # while a hand holds the study the frame stands still
+        self._held = False
         ratio = np.concatenate([np.geomspace(1e-4, 0.01, 20), np.linspace(0.011, 1.0, 180)])
         self.transition = ColumnDataSource(
             {
@@ -51,18 +54,23 @@ class PhasePlane:
         self.limits = ColumnDataSource(word_columns())
         self.notes = ColumnDataSource(word_columns())
         self._draw()
+        self._point()
 
     @property
     def figure(self) -> Any:
         """The Bokeh figure."""
         return self.canvas.figure
 
+    def hold(self, held: bool) -> None:
+        """Let the frame stand still while a hand holds the study."""
+        self._held = held
+
     def show_study(self, reach: Reach) -> None:
         """Mark the study and make room for it."""
         fig, delta, eps = self.figure, reach.sampling_ratio, reach.sparsity
         right = _stretch(delta, _RATIO_STRETCHES)
         top = _stretch(eps, _SPARSITY_STRETCHES)
-        if self.held:
+        if self._held:
             right, top = fig.x_range.end, fig.y_range.end
         if (fig.x_range.end, fig.y_range.end) != (right, top):
             fig.x_range.update(end=right)
@@ -112,6 +120,25 @@ class PhasePlane:
         canvas.dot(self.study, 16)
         canvas.words(self.limits, text_font_size="11px", padding=2)
         canvas.words(self.notes)
+
+    def _point(self) -> None:
+        """Let the browser tell the power limit at the pointer, without a word to Python."""
+        canvas, fig = self.canvas, self.figure
+        words = ColumnDataSource(word_columns())
+        lines = [
+            Span(dimension=dimension, location=0.0, visible=False, line_width=1)
+            for dimension in ("height", "width")
+        ]
+        for line in lines:
+            canvas.token(line, line_color="edge")
+            fig.add_layout(line)
+        canvas.words(words)
+        args = {
+            "transition": self.transition, "words": words, "upright": lines[0],
+            "level": lines[1], "x_range": fig.x_range, "y_range": fig.y_range,
+        }  # fmt: skip
+        fig.js_on_event("mousemove", CustomJS(args=args, code=_POINT))
+        fig.js_on_event("mouseleave", CustomJS(args=args, code=f"cb_obj = {{x: -1}}; {_POINT}"))
 
     def _draw_limit(self, limit: float) -> None:
         """Shade the studies whose power limit is lower, and draw the line where it is met."""

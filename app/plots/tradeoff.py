@@ -41,6 +41,9 @@ class TradeoffPlane:
             {"x": [], "y": [], "text": [], "x_target": [], "y_target": [], "dx": []},
             name="kept",
         )
+        self.stand_in = ColumnDataSource(
+            {"x": [], "y": [], "x_target": [], "y_target": []}, name="stand-in"
+        )
         self.loupe = Loupe(self.curves, self.target, self.kept)
         self._draw()
 
@@ -67,14 +70,15 @@ class TradeoffPlane:
 
     def show_reach(self, reach: Reach, shown: tuple[str, ...]) -> None:
         """Draw the target, the power limit and picking at random."""
-        u, q, limit, chance = reach.tpp, reach.fdp, reach.power_limit, reach.random_fdp
+        u, q, limit = reach.tpp, reach.fdp, reach.power_limit
+        random = reach.random_fdp
         put(
             self.rules,
             {
                 "x0": [0.0, u, 0.0],
-                "y0": [q, 0.0, chance],
+                "y0": [q, 0.0, random],
                 "x1": [u, u, 1.0],
-                "y1": [q, q, chance],
+                "y1": [q, q, random],
                 "dash": ["solid", "solid", "dotted"],
             },
         )
@@ -82,10 +86,18 @@ class TradeoffPlane:
         put(self.limit, upright if limit < 1.0 else {"x": [], "y": []})
         put(self.target, {"x": [u], "y": [q]})
         self.loupe.show(reach, shown)
-        put(
-            self.notes,
-            word_columns([*_limit_notes(reach), _random_note(reach), *_closed(reach)]),
-        )
+        chance = _random_note(reach, at_right=self.loupe.side == "left")
+        put(self.notes, word_columns([*_limit_notes(reach), chance, *_closed(reach)]))
+
+    def show_stand_in(
+        self, point: tuple[float, float] | None, aim: tuple[float, float]
+    ) -> None:
+        """Mark the point that would be kept for a target out of reach."""
+        columns = {"x": [], "y": [], "x_target": [], "y_target": []}
+        if point is not None:
+            values = (*point, *aim)
+            columns = {key: [value] for key, value in zip(columns, values, strict=True)}
+        put(self.stand_in, columns)
 
     def show_kept(self, kept: list[Mark]) -> None:
         """Mark the kept points, each with a stem from the target that it stands for."""
@@ -115,6 +127,12 @@ class TradeoffPlane:
         canvas.token(limit.glyph, line_color="power_limit")
         canvas.words(self.notes)
         canvas.words(self.names)
+        stem = fig.segment(
+            "x", "y", "x_target", "y_target", source=self.stand_in, line_dash="dotted"
+        )
+        ring = fig.scatter("x", "y", source=self.stand_in, size=11, line_width=1.6)
+        canvas.token(stem.glyph, line_color="ink")
+        canvas.token(ring.glyph, line_color="ink", fill_color="surface")
         canvas.kept(self.kept)
         canvas.dot(self.target, 16)
 
@@ -160,11 +178,11 @@ def _lasso_name(curves: Curves) -> list[Word]:
     return [(float(tpp[at]), float(fdp[at]), "lasso", *side)]
 
 
-def _random_note(reach: Reach) -> Word:
+def _random_note(reach: Reach, at_right: bool) -> Word:
     chance = reach.random_fdp
     below = 12.0 if chance > 0.9 else -10.0
     text = f"picking at random {computed(chance, 2)}"
-    if reach.power_limit < 0.4:  # the left is taken by the words on the power limit
+    if at_right or reach.power_limit < 0.4:  # the left is taken by the loupe or other words
         return (1.0, chance, text, -5.0, below, "right")
     return (0.0, chance, text, 5.0, below, "left")
 

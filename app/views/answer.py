@@ -12,7 +12,7 @@ from engine.limits.families import FAMILIES
 
 __all__ = ["AnswerView"]
 
-_KEEPING = {"tpp": "TPP", "fdp": "FDP", "nearest": "neither"}
+_KEEPING = {"tpp": "its TPP", "fdp": "its FDP", "nearest": "the nearest"}
 
 
 class AnswerView:
@@ -90,7 +90,7 @@ def _keep_html(session: Session) -> Markup:
         "{disabled}>Keep this point <kbd>K</kbd></button>{state}</div>"
         '<div class="keep-row">as {penalties}</div>'
         '<div class="keep-row" title="Where the target is out of the penalty\'s reach, a point '
-        'of its boundary is kept instead">if out of reach, keep its {keeping}</div>{refusal}'
+        'of its boundary is kept instead">if out of reach, keep {keeping}</div>{refusal}'
     ).format(
         disabled=Markup('disabled title="{}"').format(refusal) if refusal else "",
         penalties=_choice("Penalty to keep", "keep-as", "penalty", penalties, session.kept_as),

@@ -15,7 +15,7 @@ from app.plots.phase import PhasePlane
 from app.plots.saved import SavedPlot
 from app.plots.siblings import SiblingsPlot
 from app.plots.tradeoff import TradeoffPlane
-from app.reach import Reach
+from app.reach import Reach, stand_in
 from app.siblings import RATIOS, SPARSITIES
 from app.state import Session
 from app.theme import THEMES
@@ -45,13 +45,20 @@ class ReachView:
         self._canvases = [plane.canvas, plane.loupe.canvas, *small]
         link_crosshair(self._canvases, own)
         self.ends = Ends()
-        self.target_grip = self._grip("Target", "tradeoff-plane", "target", TPP, FDP)
-        self.study_grip = self._grip("Study", "phase-plane", "study", SAMPLING_RATIO, SPARSITY)
+        self.target_grip = Grip(
+            "Target", "tradeoff-plane", "target", TPP, FDP,
+            on_move=partial(self._drag, TPP, FDP), step=TPP.step,
+        )  # fmt: skip
+        self.study_grip = Grip(
+            "Study", "phase-plane", "study", SAMPLING_RATIO, SPARSITY,
+            on_move=partial(self._drag, SAMPLING_RATIO, SPARSITY), on_hold=self.phase.hold,
+        )  # fmt: skip
         watch = session.param.watch
         watch(self._show_curves, ["curves", "hatched", "shown"])
         watch(self._show_siblings, ["siblings", "curves"])
         watch(self._show_needs, ["needs", "hatched", "shown"])
         watch(self._show_reach, ["reach", "problem", "shown"])
+        watch(self._show_stand_in, ["reach", "problem", "kept_as", "keeping"])
         watch(self._show_ends, ["reach", "shown"])
         watch(self._show_kept, ["curves"])
         session.kept.param.watch(self._show_kept, ["points"])
@@ -80,23 +87,9 @@ class ReachView:
 
     # ---- the handles
 
-    def _grip(self, label: str, figure: str, source: str, x: Quantity, y: Quantity) -> Grip:
-        move = partial(self._drag, x, y)
-        return Grip(label, figure, source, x, y, move, partial(self._hold, figure))
-
     def _drag(self, across: Quantity, up: Quantity, x: float, y: float) -> None:
         self._inbox.post(across.name, round(x, _DRAG_DIGITS))
         self._inbox.post(up.name, round(y, _DRAG_DIGITS))
-
-    def _hold(self, figure: str, held: bool) -> None:
-        """Let the frame stand still under the hand; let the target rest on whole hundredths."""
-        session = self._session
-        self.phase.held = held and figure == "phase-plane"
-        if not held and session.reach is not None:
-            self._inbox.post(TPP.name, max(round(session.tpp, 2), TPP.step))
-            self._inbox.post(
-                FDP.name, min(max(round(session.fdp, 2), FDP.step), 1.0 - FDP.step)
-            )
 
     # ---- what the session changes
 
@@ -123,6 +116,14 @@ class ReachView:
         if session.reach is not None and session.problem is None:
             self.tradeoff.show_reach(session.reach, session.shown)
             self.phase.show_study(session.reach)
+
+    def _show_stand_in(self, *_: Any) -> None:
+        session = self._session
+        reach, curves = session.reach, session.curves
+        if reach is not None and curves is not None and session.problem is None:
+            aim = (reach.tpp, reach.fdp)
+            point = stand_in(curves, session.kept_as, *aim, session.keeping)
+            self.tradeoff.show_stand_in(point, aim)
 
     def _show_ends(self, *_: Any) -> None:
         session = self._session

@@ -18,10 +18,18 @@ from engine.normal import Array
 
 __all__ = ["Contours", "contours_from"]
 
-# Where the lines bend most: at small ratios, and at small sparsities.
-_RATIOS = np.append(np.linspace(0.0, 1.0, 101), np.geomspace(1.05, 20.0, 28))
+# Nodes crowd where the lines bend: at small ratios and sparsities, and towards a ratio of 1.
+_RATIOS = np.concatenate(
+    [
+        [0.0],
+        np.geomspace(0.01, 0.1, 24)[:-1],
+        np.linspace(0.1, 0.93, 84)[:-1],
+        np.linspace(0.93, 1.05, 25)[:-1],
+        np.geomspace(1.05, 20.0, 28),
+    ]
+)
 _SPARSITIES = np.linspace(0.0005 ** (1 / 3), 0.98 ** (1 / 3), 64) ** 3
-_TPPS = np.linspace(0.0, 1.0, 101)
+_TPPS = np.linspace(0.0, 1.0, 201)
 
 # Nodes of a line, as shares of the sparsity from which picking at random does; just below it
 # the lines of all but the lasso turn towards ratio 0.

@@ -56,7 +56,7 @@ def reachable_tpp(
     --------
     >>> from engine.limits.nearest import reachable_tpp
     >>> round(reachable_tpp("lasso", 0.8, 0.5, 0.3, 0.2, "fdp"), 3)
-    0.444
+    0.447
     """
     if penalty not in FAMILIES:
         raise ValueError(f"penalty must be one of {', '.join(FAMILIES)}, not {penalty!r}")

@@ -4,10 +4,10 @@ import base64
 
 import pytest
 
-from app.reach import exact
-from app.state import Problem, Session, point_letter
+from app.reach import exact, stand_in
+from app.ready import ready_atlas, ready_contours
+from app.state import Problem, Session
 from engine.demo import DEMO_STUDY
-from engine.shortlist import MOST_POINTS
 
 
 def at_once(target, done):
@@ -111,59 +111,73 @@ def test_the_target_alone_keeps_exact_curves(session):
     assert session.curves is curves
 
 
-def test_keep_remove_undo(session):
-    session.keep_as("sorted-l1")
-    session.keep_point()
-    session.keep_as("two-level")
-    session.keep_point()
-    assert [point.penalty for point in session.points] == ["sorted-l1", "two-level"]
-    session.remove(0)
-    assert [point.penalty for point in session.points] == ["two-level"]
-    session.undo()
-    assert len(session.points) == 2
-    session.remove(7)
-    assert len(session.points) == 2
+def test_points_are_kept_for_the_penalty_chosen(session):
+    for penalty in ("sorted-l1", "two-level"):
+        session.keep_as(penalty)
+        session.keep_point()
+    assert [point.penalty for point in session.kept.points] == ["sorted-l1", "two-level"]
 
 
 def test_what_has_no_point_is_not_kept(session):
     session.keep_as("lasso")
     session.keep_point()
-    assert session.points == ()
+    assert session.kept.points == ()
     assert session.cannot_keep() == "no lasso has TPP 0.80: its power limit is lower"
     session.keep_as("two-level-closed-form")  # a curve, not a penalty
     session.keep_as("no such penalty")
-    assert session.kept_as == "lasso"
+    session.when_out("no such word")
+    assert (session.kept_as, session.keeping) == ("lasso", "tpp")
 
 
-def test_marks_stand_on_the_study_they_were_kept_on(session):
-    session.keep_as("sorted-l1")
-    session.propose({"fdp": 0.3})
+@pytest.mark.parametrize("keeping", ["fdp", "nearest"])
+def test_a_target_out_of_reach_is_kept_at_a_point_of_the_boundary(session, keeping):
+    session.keep_as("lasso")
+    session.when_out(keeping)
+    session.propose({"fdp": 0.4})
+    assert not session.cannot_keep()
     session.keep_point()
-    ((letter, tpp, fdp, aimed),) = session.kept_marks()
-    assert (letter, tpp, aimed) == ("A", 0.8, 0.3)
-    assert fdp == session.points[0].fdp
-    session.propose({"runs": 700})
-    assert session.kept_marks() == []
+    (point,) = session.kept.points
+    assert point.tpp < session.reach.power_limit
+    if keeping == "fdp":
+        assert point.fdp == pytest.approx(0.4, abs=1e-4)
+    preview = stand_in(session.curves, "lasso", 0.8, 0.4, keeping)
+    assert preview == pytest.approx((point.tpp, point.fdp), abs=0.02)  # a node of the curves
+
+
+def test_a_kept_point_brings_its_study_back(session):
+    session.keep_as("two-level")
+    session.keep_point()
+    session.keep_as("lasso")
+    session.propose({"runs": 700, "tpp": 0.3, "fdp": 0.1})
+    session.open_point(0)
+    assert session.study() == DEMO_STUDY
+    assert session.kept_as == "two-level"
+    session.open_point(5)
+    assert session.study() == DEMO_STUDY
 
 
 def test_import_is_all_or_nothing_and_knows_what_it_has(session):
     session.keep_as("sorted-l1")
     session.keep_point()
-    text = session.exported().encode()
+    text = session.kept.exported().encode()
     session.import_points(upload(text))
-    assert session.notice == "0 added, 1 already there."
+    assert session.kept.notice == "0 added, 1 already there."
     session.import_points(upload(text.replace(b'"tpp": 0.8', b'"tpp": 1.8')))
-    assert len(session.points) == 1
+    assert len(session.kept.points) == 1
     assert session.problem.message.startswith("file.json: points[0].study.target.tpp must be")
 
 
-def test_the_shortlist_has_an_end(session):
-    session.keep_as("sorted-l1")
-    session.keep_point()
-    session.param.update(points=session.points * MOST_POINTS)
-    session.keep_point()
-    assert len(session.points) == MOST_POINTS
-    assert "at most 200" in session.notice
+def test_needs_follow_the_target_and_siblings_the_study():
+    session = Session(never, ready_atlas(), ready_contours())
+    session.open_study(DEMO_STUDY)
+    needs, siblings = session.needs, session.siblings
+    session.propose({"runs": 700})
+    assert session.needs is needs
+    assert session.siblings is not siblings
+    siblings = session.siblings
+    session.propose({"tpp": 0.5})
+    assert session.needs is not needs
+    assert session.siblings is siblings
 
 
 def test_an_upload_too_large_arrives_without_content(session):
@@ -174,10 +188,6 @@ def test_an_upload_too_large_arrives_without_content(session):
 def test_titles_are_cut_not_refused(session):
     session.rename_study("x" * 300)
     assert len(session.study().title) == 200
-
-
-def test_letters_go_on_after_z():
-    assert [point_letter(i) for i in (0, 25, 26, 52)] == ["A", "Z", "A2", "A3"]
 
 
 def test_what_is_hatched_is_a_penalty(session):

@@ -77,3 +77,23 @@ def data(page: Page, name: str) -> dict[str, list[float]]:
         }""",
         name,
     )
+
+
+# From data to page coordinates, by the plane's own view.
+_TO_PAGE = """([name, x, y]) => {
+  const model = Bokeh.documents[0].get_model_by_name(name)
+  const view = Bokeh.index.find_one(model)
+  const box = view.canvas_view.el.getBoundingClientRect()
+  const {x_range, y_range} = model
+  const frame = view.frame.bbox
+  return [
+    box.left + frame.left + (x - x_range.start) / (x_range.end - x_range.start) * frame.width,
+    box.top + frame.bottom - (y - y_range.start) / (y_range.end - y_range.start) * frame.height,
+  ]
+}"""
+
+
+def place(page: Page, plane: str, x: float, y: float) -> tuple[float, float]:
+    """Return where a point of a figure stands on the page."""
+    left, top = page.evaluate(_TO_PAGE, [plane, x, y])
+    return left, top

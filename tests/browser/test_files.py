@@ -15,8 +15,11 @@ DEMO_SHORTLIST = ROOT / "assets" / "demo-shortlist.json"
 
 
 def choose(page: Page, label: str) -> None:
-    page.locator(".keep-as").get_by_role("button", name=label, exact=True).click()
-    pressed = page.locator(".keep-as").get_by_role("button", name=label, exact=True)
+    keep = page.get_by_role("group", name="Penalty to keep")
+    keep.get_by_role("button", name=label, exact=True).click()
+    pressed = page.get_by_role("group", name="Penalty to keep").get_by_role(
+        "button", name=label, exact=True
+    )
     expect(pressed).to_have_attribute("aria-pressed", "true")
 
 
@@ -39,7 +42,7 @@ def test_a_kept_point_is_exported_with_its_numbers(open_page, demo_url):
     choose(page, "sorted L1")
     page.keyboard.press("k")
     expect(page.locator(".chip")).to_have_count(1)
-    expect(page.locator(".notice")).to_contain_text("Kept as A")
+    expect(page.locator(".strip .notice")).to_contain_text("Kept as A")
     file = json.loads(exported(page))
     jsonschema.Draft202012Validator(shortlist_schema()).validate(file)
     (point,) = file["points"]
@@ -82,7 +85,7 @@ def test_export_import_export_is_the_same_to_the_byte(open_page, demo_url):
     expect(page.locator(".chip")).to_have_count(3)
     assert exported(page) == DEMO_SHORTLIST.read_text(encoding="utf-8")
     upload(page, "import", "s.json", DEMO_SHORTLIST.read_bytes())
-    expect(page.locator(".notice")).to_contain_text("0 added, 3 already there")
+    expect(page.locator(".strip .notice")).to_contain_text("0 added, 3 already there")
     expect(page.locator(".chip")).to_have_count(3)
 
 
