@@ -1,6 +1,7 @@
 """Sorted L1 on studies that share the sampling ratio, or the sparsity, of the user's."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -27,12 +28,20 @@ class Siblings:
 def siblings(sampling_ratio: float, sparsity: float, atlas: Atlas) -> Siblings:
     """Read the boundaries of sorted L1 off the atlas, for drawing."""
 
-    def along(delta: float, eps: float) -> Array:
-        read: Array = np.interp(_TPP, *atlas.curve("sorted-l1", delta, eps))
-        return read
+    return Siblings(_TPP, _by_sparsity(sampling_ratio, atlas), _by_ratio(sparsity, atlas))
 
-    return Siblings(
-        _TPP,
-        tuple(along(sampling_ratio, eps) for eps in SPARSITIES),
-        tuple(along(delta, sparsity) for delta in RATIOS),
-    )
+
+# Where only one of the two ratios moves, the other family stays as it is.
+@lru_cache(maxsize=8)
+def _by_sparsity(sampling_ratio: float, atlas: Atlas) -> tuple[Array, ...]:
+    return tuple(_along(sampling_ratio, eps, atlas) for eps in SPARSITIES)
+
+
+@lru_cache(maxsize=8)
+def _by_ratio(sparsity: float, atlas: Atlas) -> tuple[Array, ...]:
+    return tuple(_along(delta, sparsity, atlas) for delta in RATIOS)
+
+
+def _along(delta: float, eps: float, atlas: Atlas) -> Array:
+    read: Array = np.interp(_TPP, *atlas.curve("sorted-l1", delta, eps))
+    return read

@@ -83,9 +83,13 @@ export function render({model, el}) {
     tick.hidden = !inside
     if (inside) tick.style.setProperty("--at", place(model.tick) / SPAN)
   }
+  // Answers to earlier steps are late: until they have come, the slider's own value counts.
+  let quiet = 0
   const send = (v) => {
     value = v
     paint()
+    quiet = performance.now() + 300
+    setTimeout(refresh, 310)
     model.send_msg({field: id, value: v})
   }
 
@@ -142,7 +146,11 @@ export function render({model, el}) {
       input.setAttribute("aria-invalid", String(model.error !== "" && input === wrong))
     }
   }
-  const refresh = () => { value = model.value; paint() }
+  const refresh = () => {
+    if (performance.now() < quiet) return
+    value = model.value
+    paint()
+  }
   model.on("value", refresh)
   model.on("per", paint)
   model.on("tick", paint)

@@ -2,6 +2,7 @@
 // line. The frame of the plane beside it has fixed borders, so heights in it are known.
 
 const GAP = 26
+const narrow = window.matchMedia("(max-width: 760px)")
 const NS = "http://www.w3.org/2000/svg"
 
 export function render({model, el}) {
@@ -48,7 +49,7 @@ export function render({model, el}) {
     const block = root.querySelector(".block")
     const counts = root.querySelector(".counts")
     svg.replaceChildren()
-    if (getComputedStyle(root).getPropertyValue("--narrow").trim() === "1" || height < 120) {
+    if (narrow.matches || height < 120) {
       block.style.top = counts.style.top = ""
       return
     }

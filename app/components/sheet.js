@@ -73,7 +73,7 @@ export function render({model, el}) {
       document.documentElement.dataset.theme = name
     },
     dim({on}) {
-      document.querySelector(".planes").classList.toggle("wrong", on)
+      document.querySelector(".page.reach").classList.toggle("wrong", on)
     },
     count({kept}) {
       const badge = document.querySelector("#tab-shortlist b")

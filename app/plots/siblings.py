@@ -39,6 +39,7 @@ class SiblingsPlot:
         target: ColumnDataSource,
     ) -> None:
         self._values, self._at_ends = values, at_ends
+        self._drawn: tuple[Array, ...] | None = None
         ticks = [0.0, 0.5, 1.0]
         borders = Borders(8, 22, 30, 14)
         right = 1.14 if at_ends else 1.0  # room for names
@@ -56,7 +57,9 @@ class SiblingsPlot:
 
     def show(self, tpp: Array, curves: tuple[Array, ...], own_value: float, own: Array) -> None:
         """Draw the curves along `tpp`, and name them and the study's own."""
-        self.curves.data = {"tpp": tpp, **dict(zip(self._keys, curves, strict=True))}
+        if curves is not self._drawn:
+            self.curves.data = {"tpp": tpp, **dict(zip(self._keys, curves, strict=True))}
+            self._drawn = curves
         named = [
             (value, curve)
             for value, curve in zip(self._values, curves, strict=True)

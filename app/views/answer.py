@@ -4,6 +4,7 @@ from typing import Any
 
 from markupsafe import Markup
 
+from app.afterwards import Afterwards
 from app.components.sheet import Sheet
 from app.state import Session
 from app.verdict import Piece, verdict
@@ -18,13 +19,14 @@ _KEEPING = {"tpp": "its TPP", "fdp": "its FDP", "nearest": "the nearest"}
 class AnswerView:
     """The sentence and the Keep button of one session."""
 
-    def __init__(self, session: Session) -> None:
+    def __init__(self, session: Session, afterwards: Afterwards) -> None:
         self._session = session
         self.verdict = Sheet("verdict", self._use, live=True)
         self.keep = Sheet("keep", self._use)
         watch = session.param.watch
-        watch(self._show_verdict, ["reach", "problem"])
-        watch(self._show_keep, ["reach", "kept_as", "keeping", "problem"])
+        later = afterwards.put_off
+        watch(later(self._show_verdict), ["reach", "problem"])
+        watch(later(self._show_keep), ["reach", "kept_as", "keeping", "problem"])
         watch(self._dim, ["problem"])
         self._show_verdict()
         self._show_keep()

@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 import panel as pn
 
+from app.afterwards import Afterwards
 from app.coalesce import Coalescer
 from app.components.ends import Ends
 from app.components.grip import Grip
@@ -32,7 +33,7 @@ _DRAG_DIGITS = 3
 class ReachView:
     """Pictures and words of one session's Reach page, built once."""
 
-    def __init__(self, session: Session, inbox: Coalescer) -> None:
+    def __init__(self, session: Session, inbox: Coalescer, afterwards: Afterwards) -> None:
         self._session = session
         self._inbox = inbox
         self.tradeoff = plane = TradeoffPlane()
@@ -59,7 +60,7 @@ class ReachView:
         watch(self._show_needs, ["needs", "hatched", "shown"])
         watch(self._show_reach, ["reach", "problem", "shown"])
         watch(self._show_stand_in, ["reach", "problem", "kept_as", "keeping"])
-        watch(self._show_ends, ["reach", "shown"])
+        watch(afterwards.put_off(self._show_ends), ["reach", "shown"])
         watch(self._show_kept, ["curves"])
         session.kept.param.watch(self._show_kept, ["points"])
         watch(self._repaint, ["theme"])

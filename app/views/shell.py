@@ -7,6 +7,7 @@ from urllib.parse import quote
 import panel as pn
 from markupsafe import Markup
 
+from app.afterwards import Afterwards
 from app.coalesce import Coalescer
 from app.components.sheet import Sheet
 from app.evaluation import evaluator
@@ -39,10 +40,11 @@ def page(study: Study | None) -> pn.Template:
     doc = pn.state.curdoc
     session = Session(evaluator(doc), ready_atlas(), ready_contours())
     inbox = Coalescer(doc, session.propose)
-    reach = ReachView(session, inbox)  # first, so that its pictures change first
+    afterwards = Afterwards(doc)
+    reach = ReachView(session, inbox, afterwards)
     reach.tradeoff.loupe.attach(doc)
-    rail = StudyRail(session, inbox)
-    answer = AnswerView(session)
+    rail = StudyRail(session, inbox, afterwards)
+    answer = AnswerView(session, afterwards)
     shortlist = ShortlistView(session)
     frame = _Frame(session)
     query = {name: values[-1].decode() for name, values in pn.state.session_args.items()}

@@ -4,6 +4,7 @@ from typing import Any
 
 from markupsafe import Markup
 
+from app.afterwards import Afterwards
 from app.coalesce import Coalescer
 from app.components.control import Control
 from app.components.sheet import Sheet
@@ -20,7 +21,7 @@ _PAIRS = {RUNS.name: SAMPLING_RATIO, ACTIVES.name: SPARSITY}
 class StudyRail:
     """Controls of one session; they post changes and show what the session holds."""
 
-    def __init__(self, session: Session, inbox: Coalescer) -> None:
+    def __init__(self, session: Session, inbox: Coalescer, afterwards: Afterwards) -> None:
         self._session = session
 
         def post(data: dict[str, Any]) -> None:
@@ -36,9 +37,10 @@ class StudyRail:
         self.keeping = Sheet("keeping", self._use)
         self.penalties = Sheet("penalties", self._use)
         self.caution = Sheet("caution", html=_CAUTION)
-        session.param.watch(self._show_values, ["accepted"])
-        session.param.watch(self._show_transition, ["reach"])
-        session.param.watch(self._show_problem, ["problem"])
+        later = afterwards.put_off
+        session.param.watch(later(self._show_values), ["accepted"])
+        session.param.watch(later(self._show_transition), ["reach"])
+        session.param.watch(later(self._show_problem), ["problem"])
         session.param.watch(self._show_choices, ["keeps_counts", "shown", "hatched"])
         self._show_values()
         self._show_choices()
@@ -87,7 +89,8 @@ class StudyRail:
         changes = {
             key: value for key, value in changes.items() if getattr(control, key) != value
         }
-        control.param.update(**changes, accepted=self._session.accepted)
+        if changes or {name, control.per_field} & self._session.typed:
+            control.param.update(**changes, accepted=self._session.accepted)
 
     def _show_problem(self, *_: Any) -> None:
         problem = self._session.problem
