@@ -29,6 +29,8 @@ _SHORTEST_BURST, _LONGEST_BURST = 15, 100
 _MOST_STALE = 50  # moves in a row that bring no smaller gap
 _ROUNDING = 1e-12  # of the objective, in units of ||y||^2
 _MOST_HALVINGS = 20
+# Added to U'G U where its clusters may be more than the runs; columns are of length one.
+_RIDGE = 1e-6
 # From this gap on a burst comes first: the clusters of a fit further off are not worth a guess.
 _FAR = 1e-3
 
@@ -65,12 +67,19 @@ class _Restricted:
         """The clusters of a long proximal gradient step from `point`."""
         return prox_blocks(point.x + _STEP * point.h, _STEP * self.weights)
 
-    def cluster_step(self, blocks: Blocks) -> _Point | None:
-        """The optimum were these its clusters; None where their equations have no solution."""
-        if not 0 < blocks.starts.size <= self.runs:
+    def cluster_step(self, blocks: Blocks, near: Array | None = None) -> _Point | None:
+        """The optimum were these its clusters; None where their equations have no solution.
+
+        With `near`, a point that has these clusters, the optimum less far from it than others
+        that are as good, so that there is one even for more clusters than runs.
+        """
+        if not blocks.starts.size or (near is None and blocks.starts.size > self.runs):
             return None
         members = blocks.members
         matrix, right = self._equations(blocks)
+        if near is not None:
+            matrix[np.diag_indices_from(matrix)] += _RIDGE
+            right = right + _RIDGE * np.abs(near[members[blocks.starts]])
         try:
             # Symmetric, so its transpose is the column-major form that saves a copy.
             factor = cho_factor(matrix.T, lower=True, overwrite_a=True, check_finite=False)
@@ -96,7 +105,7 @@ class _Restricted:
 
     def descend(self, point: _Point) -> _Point:
         """Towards the optimum for the clusters of `point` itself, as far as that helps."""
-        proposal = self.cluster_step(clusters(point.x))
+        proposal = self.cluster_step(clusters(point.x), point.x)
         if proposal is None:
             return point
         for _ in range(_MOST_HALVINGS):

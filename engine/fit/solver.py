@@ -100,17 +100,14 @@ class Solver:
                 passes += self._approach(scale * weights, _COARSE).passes
         point = self._approach(weights, gap)
         passes += point.passes
-        undecided = unsettled(self._b, point.g, weights)
+        undecided = self._undecided(weights, point)
         for _ in range(_MOST_SETTLES):
             if not undecided.size or point.gap <= _ROUNDING:
                 break
             self._admit(undecided, point.g)
             point = self._approach(weights, 0.03 * point.gap)
             passes += point.passes
-            undecided = unsettled(self._b, point.g, weights)
-        found = clusters(self._b)
-        if found.starts.size > self._y.size:  # the optimum has no more clusters than runs
-            undecided = np.union1d(undecided, found.members)
+            undecided = self._undecided(weights, point)
         certified = point.gap <= gap
         return Solution(
             self._b.copy(), point.r, point.g, point.gap, certified, undecided, passes
@@ -132,6 +129,13 @@ class Solver:
             coarse = max(0.3 * gap, min(1e-2, 0.05 * point.gap))
             self._refit(weights, exactness * coarse)
         return point
+
+    def _undecided(self, weights: Array, point: _Pass) -> Indices:
+        undecided = unsettled(self._b, point.g, weights)
+        found = clusters(self._b)
+        if found.starts.size > self._y.size:  # the optimum has no more clusters than runs
+            undecided = np.union1d(undecided, found.members)
+        return undecided
 
     def _pass(self, weights: Array, number: int) -> _Pass:
         on = self._held.indices

@@ -181,8 +181,8 @@ def test_two_stage_in_a_large_study():
         rng = np.random.default_rng(seed)
         X = rng.normal(size=(n, p))
         y = 0.2 * X[:, :k].sum(axis=1) + rng.normal(size=n)
-        # At this strength tau is near its smallest, so TPP hardly depends on it.
-        debiased = debias(fit(X, y, 2.2, intercept=False, gap=1e-6))
+        # The strength of the smallest tau, 1.681, by the formulas cited above (threshold 1.461).
+        debiased = debias(fit(X, y, 0.958, intercept=False, gap=1e-6))
         selected = cut(debiased, threshold=threshold).selected
         tpp.append(np.mean(np.isin(np.arange(k), selected)))
         fdp.append(np.mean(selected >= k))
