@@ -24,9 +24,11 @@ GAP = Quantity(
 )  # fmt: skip
 
 
-def check_design(X: Any) -> Matrix:
-    """Return the design as a matrix of floats."""
-    rule = "X must be a matrix of finite numbers, a row a run and a column a candidate, not "
+def check_design(X: Any, name: str = "X") -> Matrix:
+    """Return the design, called `name`, as a matrix of floats."""
+    rule = (
+        f"{name} must be a matrix of finite numbers, a row a run and a column a candidate, not "
+    )
     array = _numbers(X, rule)
     if array.ndim != 2 or array.size == 0:
         raise ValueError(f"{rule}one of shape {array.shape}")

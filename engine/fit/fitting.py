@@ -18,7 +18,7 @@ from engine.fit.scaling import COLUMNS, LOSSES, Scaled, scaled
 from engine.fit.solver import Solution, Solver
 from engine.normal import Array
 
-__all__ = ["Fit", "fit", "path"]
+__all__ = ["Fit", "fit", "in_given_units", "path"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -217,11 +217,12 @@ def path(
     fits: dict[int, Fit] = {}
     for i in np.argsort(-scales).tolist():
         solution = solver.solve(scales[i] * problem.weight_factor * weights, gap)
-        fits[i] = _in_given_units(solution, problem)
+        fits[i] = in_given_units(solution, problem)
     return tuple(fits[i] for i in range(scales.size))
 
 
-def _in_given_units(solution: Solution, problem: Scaled) -> Fit:
+def in_given_units(solution: Solution, problem: Scaled) -> Fit:
+    """Return a solution of the scaled problem as the user reads it."""
     slopes = solution.b * problem.slope_factors
     return Fit(
         coefficients=solution.b * problem.coefficient_factor,

@@ -11,13 +11,16 @@ the solver's have a mean square length of one, and m is the root of theirs.
 """
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from engine.fit.gram import Matrix
 from engine.normal import Array
 
-__all__ = ["COLUMNS", "LOSSES", "Scaled", "scaled"]
+__all__ = ["COLUMNS", "LOSSES", "Scaled", "scaled", "varying"]
+
+Flags = np.ndarray[Any, np.dtype[np.bool_]]
 
 COLUMNS = ("unit-length", "unit-variance", "as-given")
 LOSSES = ("sum", "mean")
@@ -71,15 +74,16 @@ def scaled(X: Matrix, y: Array, columns: str, loss: str, intercept: bool) -> Sca
         If a column has no length, or with an intercept is constant.
     """
     n, p = X.shape
+    if intercept:
+        _refuse_empty(varying(X), "one and the same value")
     # Divided by their largest entries first: no square overflows, none vanishes.
     column_units = np.abs(X).max(axis=0)
-    _refuse_empty(column_units > 0.0, "zeros")
+    _refuse_empty(column_units > 0.0, "only zeros")
     X = np.asfortranarray(X / column_units)
     centres, centre = np.zeros(p), 0.0
     response_unit = float(np.abs(y).max()) or 1.0
     y = y / response_unit
     if intercept:
-        _refuse_empty(np.ptp(X, axis=0) > _CONSTANT, "one and the same value")
         centres, centre = X.mean(axis=0), float(y.mean())
         X -= centres
         y = y - centre if np.ptp(y) > _CONSTANT else np.zeros(n)
@@ -109,7 +113,14 @@ def scaled(X: Matrix, y: Array, columns: str, loss: str, intercept: bool) -> Sca
     )
 
 
-def _refuse_empty(sound: "np.ndarray[tuple[int], np.dtype[np.bool_]]", what: str) -> None:
+def varying(X: Matrix) -> Flags:
+    """Whether each column varies, by more than rounding."""
+    low, high = X.min(axis=0), X.max(axis=0)
+    flags: Flags = high / 2.0 - low / 2.0 > _CONSTANT * np.maximum(-low, high)  # no overflow
+    return flags
+
+
+def _refuse_empty(sound: Flags, what: str) -> None:
     if not sound.all():
         raise ValueError(
             f"X must have columns that vary, not {what} in column {sound.argmin()}"
