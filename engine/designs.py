@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 from scipy.signal import lfilter
 
-from engine.fit.arguments import check_choice, check_design
+from engine.fit.arguments import check_choice, check_design, check_flag
 from engine.fit.gram import Matrix
 from engine.quantities import Quantity, shown
 
@@ -146,7 +146,7 @@ def design_of(
     ((2000, 4), [1.0, 0.5, 0.3, 0.1])
     """
     check_choice("kind", kind, KINDS)
-    check_choice("resample", resample, (True, False))
+    resample = check_flag("resample", resample)
     _only_for("correlation", correlation, kind, ("ar1", "blocks"))
     _only_for("frequencies", frequencies, kind, ("counts",), needed=False)
     _only_for("matrix", matrix, kind, ("own",))

@@ -12,6 +12,7 @@ __all__ = [
     "GAP",
     "check_choice",
     "check_design",
+    "check_flag",
     "check_response",
     "check_scales",
     "check_weights",
@@ -77,13 +78,19 @@ def check_scales(scales: Any) -> Array:
     return array
 
 
-def check_choice(name: str, value: Any, choices: tuple[Any, ...]) -> None:
-    """Refuse a value that is not one of `choices`."""
-    if not any(
-        value is choice or (isinstance(value, str) and value == choice) for choice in choices
-    ):
-        listed = " or ".join(repr(choice) for choice in choices)
+def check_choice(name: str, value: Any, choices: tuple[str, ...]) -> str:
+    """Return the value where it is one of `choices`."""
+    if not isinstance(value, str) or value not in choices:
+        listed = " or ".join(map(repr, choices))
         raise ValueError(f"{name} must be {listed}, not {shown(value)}")
+    return value
+
+
+def check_flag(name: str, value: Any) -> bool:
+    """Return the value where it is a truth value."""
+    if not isinstance(value, bool | np.bool_):
+        raise ValueError(f"{name} must be True or False, not {shown(value)}")
+    return bool(value)
 
 
 def _numbers(value: Any, rule: str) -> Array:

@@ -9,6 +9,7 @@ from engine.fit.arguments import (
     GAP,
     check_choice,
     check_design,
+    check_flag,
     check_response,
     check_scales,
     check_weights,
@@ -210,7 +211,7 @@ def path(
     weights, scales = check_weights(weights, X.shape[1]), check_scales(scales)
     check_choice("columns", columns, COLUMNS)
     check_choice("loss", loss, LOSSES)
-    check_choice("intercept", intercept, (True, False))
+    intercept = check_flag("intercept", intercept)
     gap = GAP.check(gap)
     problem = scaled(X, y, columns, loss, intercept)
     solver = Solver(problem.X, problem.y)

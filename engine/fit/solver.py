@@ -28,7 +28,7 @@ __all__ = ["Solution", "Solver"]
 # The gap to which the larger scales on the way to a cold fit are solved.
 _COARSE = 3e-2
 
-# Passes over the design; none of the problems tried needed a third of them.
+# Passes over the design on the way to one gap; the problems tried needed far fewer.
 _MOST_PASSES = 100
 # A gap that rounding does not let a pass measure.
 _ROUNDING = 1e-14
