@@ -3,6 +3,7 @@
 import sys
 
 from tests.bench.engine_ratios import Ratio, engine_ratios
+from tests.bench.fit_ratios import fit_ratios
 from tests.bench.latency import latency_ratios
 
 
@@ -13,7 +14,7 @@ def line(ratio: Ratio) -> str:
 
 
 def main() -> int:
-    ratios = [*engine_ratios(), *latency_ratios()]
+    ratios = [*engine_ratios(), *fit_ratios(), *latency_ratios()]
     print("\n".join(map(line, ratios)))
     return 0 if all(ratio.kept for ratio in ratios) else 1
 

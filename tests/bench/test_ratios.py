@@ -3,15 +3,16 @@
 import pytest
 
 from tests.bench.engine_ratios import engine_ratios
+from tests.bench.fit_ratios import fit_ratios
 from tests.bench.latency import latency_ratios
 
 
 @pytest.fixture(scope="module")
 def measured():
-    return engine_ratios()
+    return [*engine_ratios(), *fit_ratios()]
 
 
-@pytest.mark.parametrize("i", range(5))
+@pytest.mark.parametrize("i", range(7))
 def test_engine_ratios(measured, i):
     ratio = measured[i]
     assert ratio.kept, (
