@@ -11,6 +11,8 @@ Rooms, from the ground up (each imports only rooms above it in this list):
 - files, run_lengths: strict JSON; weights as runs
 - study, shortlist: what the user plans, what the user keeps; their files
 - schemas: the JSON Schemas of both files
+- fit: the certified sorted-L1 solver, for the analysis after the study
+- designs, replicate, workers, rehearsal: finite studies drawn and fitted
 
 The engine needs numpy and scipy only. It opens no folder and shows nothing.
 """
