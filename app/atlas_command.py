@@ -38,8 +38,8 @@ def add_atlas(parser: argparse.ArgumentParser) -> None:
         type=_whole(FINEST),
         default=2,
         metavar="N",
-        help=f"times as many rows and columns, 1 to {FINEST}; default 2, about half an hour of "
-        "two processors",
+        help=f"times as many rows and columns, 1 to {FINEST}; default 2, about an hour of two "
+        "processors",
     )
     parser.add_argument(
         "--workers",

@@ -111,6 +111,20 @@ def test_a_killed_build_goes_on_where_it_stopped(tmp_path):
     load_atlas(file.read_bytes())
 
 
+def test_a_terminal_shows_a_bar_and_a_file_a_line_each_tenth(capsys, monkeypatch):
+    def shown():
+        bar = app.atlas_command._Bar()
+        for done in range(41):
+            bar.show(done, 40)
+        return capsys.readouterr().err
+
+    assert shown().splitlines() == [f"{done} of 40 slices" for done in range(0, 41, 4)]
+    monkeypatch.setattr(sys.stderr, "isatty", lambda: True)
+    bars = shown().split("\r")
+    assert bars[11] == f"[{'#' * 10}{'.' * 30}] 10 of 40"
+    assert bars[-1] == f"[{'#' * 40}] 40 of 40\n"
+
+
 @pytest.fixture
 def cache(tmp_path, monkeypatch):
     monkeypatch.setattr(app.ready.platformdirs, "user_cache_path", lambda name: tmp_path / name)
