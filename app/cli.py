@@ -15,6 +15,7 @@ from typing import Any, NoReturn
 
 import numpy as np
 
+from app.atlas_command import add_atlas, atlas
 from engine.files import SHORTLIST_BYTES, STUDY_BYTES
 from engine.limits.families import FAMILIES
 from engine.limits.transition import critical_sparsity, power_limit
@@ -214,6 +215,7 @@ def _shortlist(options: argparse.Namespace) -> int:
 _COMMANDS: dict[str, tuple[Callable[..., None], Callable[..., int]]] = {
     "limits": (_add_limits, _limits),
     "shortlist": (_add_shortlist, _shortlist),
+    "atlas": (add_atlas, atlas),
 }
 
 

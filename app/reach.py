@@ -190,13 +190,14 @@ def swift_curves(sampling_ratio: float, sparsity: float, atlas: Atlas | None = N
         "lasso": np.concatenate([lasso, np.full(len(above), np.nan)]),
         "two-level-closed-form": np.concatenate([lasso, beyond]),
     }
+    if atlas is None:
+        return Curves(tpp, fdp | {key: np.full(len(tpp), np.nan) for key in SEARCHED}, False)
+    read = atlas.read_all(tpp, sampling_ratio, sparsity)
     ceiling = fdp["two-level-closed-form"]
     for key in SEARCHED:
-        if atlas is None:
-            fdp[key] = np.full(len(tpp), np.nan)
-        else:
-            read = np.interp(tpp, *atlas.curve(key, sampling_ratio, sparsity))
-            fdp[key] = ceiling = np.minimum(read, ceiling)  # the order of the curves is certain
+        fdp[key] = ceiling = np.minimum(
+            read[key], ceiling
+        )  # the order of the curves is certain
     return Curves(tpp, fdp, exact=False)
 
 

@@ -43,5 +43,4 @@ def _by_ratio(sparsity: float, atlas: Atlas) -> tuple[Array, ...]:
 
 
 def _along(delta: float, eps: float, atlas: Atlas) -> Array:
-    read: Array = np.interp(_TPP, *atlas.curve("sorted-l1", delta, eps))
-    return read
+    return atlas.read("sorted-l1", _TPP, delta, eps)

@@ -81,16 +81,18 @@ class Contours:
 
 
 def contours_from(atlas: Atlas) -> Contours:
-    """Tabulate an atlas: about half a second."""
+    """Tabulate an atlas: about a second."""
     tables = {
         key: np.empty((len(_TPPS), len(_SPARSITIES), len(_RATIOS)), np.float32)
         for key in PENALTIES
     }
-    for key, table in tables.items():
+    for table in tables.values():
+        table[0] = 0.0
         table[:, :, 0] = 1.0 - _SPARSITIES  # without runs every list is picked at random
-        for j, eps in enumerate(_SPARSITIES.tolist()):
-            for i, delta in enumerate(_RATIOS.tolist()[1:], start=1):
-                table[:, j, i] = np.interp(_TPPS, *atlas.curve(key, delta, eps))
+    for j, eps in enumerate(_SPARSITIES.tolist()):
+        for i, delta in enumerate(_RATIOS.tolist()[1:], start=1):
+            for key, read in atlas.read_all(_TPPS[1:], delta, eps).items():
+                tables[key][1:, j, i] = read
     return Contours(tables)
 
 

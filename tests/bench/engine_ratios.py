@@ -1,8 +1,10 @@
 """Speed of the limits as ratios to a yardstick measured in the same run."""
 
+import itertools
 import timeit
 from collections.abc import Callable
 from dataclasses import dataclass
+from pathlib import Path
 
 import cvxpy as cp
 import numpy as np
@@ -10,10 +12,13 @@ from scipy.optimize import isotonic_regression
 from scipy.special import ndtr
 
 from engine import lasso_boundary, sorted_l1_boundary, two_level_boundary
+from engine.limits.atlas_file import load_atlas
 from engine.limits.lasso_curve import lasso_curve
 from engine.limits.least_risk import least_risk
 
 __all__ = ["Ratio", "engine_ratios"]
+
+ROOT = Path(__file__).parents[2]
 
 
 @dataclass(frozen=True)
@@ -44,6 +49,9 @@ def engine_ratios() -> list[Ratio]:
     ndtr_256 = seconds(lambda: ndtr(x), 2000)
     isotonic_1000 = _isotonic()
     below, along = np.linspace(0.01, 0.56, 256), np.linspace(0.02, 1.0, 48)
+    atlas = load_atlas((ROOT / "assets" / "atlas.npz").read_bytes())
+    # Another sampling ratio each time: what depends on it alone is remembered.
+    ratios_tried = itertools.count(1)
     shrinkage = seconds(lambda: least_risk(1.2, (1.4,), (0.2,)), 200)
     ratios = (
         ("lasso curve, 256 points", "ndtr of 256", ndtr_256, 12, 500,
@@ -52,6 +60,8 @@ def engine_ratios() -> list[Ratio]:
          lambda: lasso_boundary(below, delta, eps)),
         ("sorted-L1 curve, 48 points", "isotonic_regression of 1,000", isotonic_1000, 4000, 1,
          lambda: sorted_l1_boundary(along, delta, eps)),
+        ("atlas curve, 48 points", "isotonic_regression of 1,000", isotonic_1000, 50, 10,
+         lambda: atlas.read("two-level", along, delta + 1e-7 * next(ratios_tried), eps)),
         ("exact two-level, 48 points", "isotonic_regression of 1,000", isotonic_1000, 15_000, 1,
          lambda: two_level_boundary(along, delta, eps)),
     )  # fmt: skip

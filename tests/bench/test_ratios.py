@@ -12,7 +12,7 @@ def measured():
     return [*engine_ratios(), *fit_ratios()]
 
 
-@pytest.mark.parametrize("i", range(7))
+@pytest.mark.parametrize("i", range(8))
 def test_engine_ratios(measured, i):
     ratio = measured[i]
     assert ratio.kept, (

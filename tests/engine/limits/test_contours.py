@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from engine import sorted_l1_boundary, two_level_boundary
-from engine.limits.atlas import load_atlas
+from engine.limits.atlas_file import load_atlas
 from engine.limits.contours import contours_from
 from engine.limits.needed import closed_form_needs, lasso_needs
 
