@@ -1,10 +1,12 @@
 """Pictures first: what may follow them leaves in a message of its own.
 
-A component of HTML costs the server half a millisecond, a figure's source a tenth of that. So
-views let their words wait until the pictures have left; the eye gets both in the same frame or
-the next one.
+A component of HTML costs the server half a millisecond, a figure's source a tenth of that, and
+words have to be laid out. So views let them wait until the pictures have left, and while the
+hand moves they follow some fifteen times a second.
 """
 
+import math
+import time
 from collections.abc import Callable
 from typing import Any
 
@@ -14,8 +16,11 @@ from panel.io import hold
 __all__ = ["Afterwards"]
 
 
+EVERY_MS = 60
+
+
 class Afterwards:
-    """Runs what was left for later, each thing once, on the document's next turn.
+    """Runs what was left for later, each thing once, at most once in `EVERY_MS`.
 
     Parameters
     ----------
@@ -26,20 +31,23 @@ class Afterwards:
     def __init__(self, doc: Document) -> None:
         self._doc = doc
         self._waiting: dict[Callable[[], None], None] = {}
+        self._last = -math.inf
 
     def put_off(self, show: Callable[[], None]) -> Callable[..., None]:
-        """Return a watcher that runs `show` on the next turn, once for all its events."""
+        """Return a watcher that runs `show` soon, once for all its events."""
 
         def watcher(*_: Any) -> None:
             waiting = bool(self._waiting)
             self._waiting[show] = None
             if not waiting:
-                self._doc.add_next_tick_callback(self._run)
+                since = 1e3 * (time.monotonic() - self._last)
+                self._doc.add_timeout_callback(self._run, int(max(EVERY_MS - since, 1.0)))
 
         return watcher
 
     def _run(self) -> None:
         waiting, self._waiting = self._waiting, {}
+        self._last = time.monotonic()
         with hold(self._doc):
             for show in waiting:
                 show()

@@ -12,8 +12,9 @@ from bokeh.models.tickers import FixedTicker
 from bokeh.plotting import figure
 
 from app.theme import CANVAS_FONT, STROKES, THEMES, Theme
+from engine.normal import Array
 
-__all__ = ["BORDERS", "Borders", "Canvas", "put", "word_columns"]
+__all__ = ["BORDERS", "Borders", "Canvas", "draw", "put", "word_columns"]
 
 
 class Borders(NamedTuple):
@@ -41,6 +42,14 @@ def put(source: ColumnDataSource, data: dict[str, list[Any]]) -> None:
     """Assign short columns to `source`, unless they stand there already."""
     if dict(source.data) != data:
         source.data = data
+
+
+def draw(source: ColumnDataSource, columns: dict[str, Array]) -> None:
+    """Assign columns of numbers as lists: as arrays each would travel in frames of its own.
+
+    Rounded to 1e-6, a thousandth of a pixel.
+    """
+    source.data = {name: column.round(6).tolist() for name, column in columns.items()}
 
 
 class Canvas:

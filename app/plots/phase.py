@@ -8,7 +8,7 @@ import numpy as np
 from bokeh.models import ColumnDataSource, CustomJS, Span
 
 from app.plots.boundaries import DRAWN
-from app.plots.canvas import Canvas, Word, put, word_columns
+from app.plots.canvas import Canvas, Word, draw, put, word_columns
 from app.reach import Needs, Reach
 from app.theme import STROKES
 from app.words import short_name
@@ -75,21 +75,25 @@ class PhasePlane:
         if (fig.x_range.end, fig.y_range.end) != (right, top):
             fig.x_range.update(end=right)
             fig.y_range.update(end=top)
-        put(self.limits, word_columns(_limit_words(right, top)))
         put(self.study, {"x": [delta], "y": [eps]})
 
-    def show_needs(self, needs: Needs, shown: tuple[str, ...], hatched: str) -> None:
-        """Draw who can meet the target where, and hatch where `hatched` cannot."""
+    def explain(self) -> None:
+        """Name the transition and the lines of equal power limit."""
+        fig = self.figure
+        put(self.limits, word_columns(_limit_words(fig.x_range.end, fig.y_range.end)))
+
+    def choose(self, shown: tuple[str, ...], hatched: str) -> None:
+        """Draw the lines of the penalties `shown`, and hatch in the colour of `hatched`."""
         for key, lines in self._lines.items():
             for line in lines:
                 line.visible = key in shown
         colour = STROKES[hatched].colour
         self.canvas.token(self._hatch, fill_color=colour, hatch_color=colour)
-        self.needs.data = {
-            "sparsity": needs.sparsity,
-            "hatch": needs.ratio[hatched],
-            **needs.ratio,
-        }
+
+    def show_needs(self, needs: Needs, shown: tuple[str, ...], hatched: str) -> None:
+        """Draw who can meet the target where, and hatch where `hatched` cannot."""
+        columns = {"sparsity": needs.sparsity, "hatch": needs.ratio[hatched]}
+        draw(self.needs, columns | needs.ratio)
         right, top = self.figure.x_range.end, self.figure.y_range.end
         chance = needs.random_sparsity
         put(self.chance, {"x0": [0.0], "x1": [2.0 * _RATIO_STRETCHES[-1]], "y": [chance]})

@@ -40,13 +40,16 @@ class SavedPlot:
         self.names = ColumnDataSource(word_columns())
         canvas.words(self.names, text_font_size="11px", padding=1)
 
+    def choose(self, shown: tuple[str, ...]) -> None:
+        """Draw the curves `shown`."""
+        for key, lines in self._lines.items():
+            for line in lines:
+                line.visible = key in shown
+
     def show(self, curves: Curves, shown: tuple[str, ...], limit: float) -> None:
         """Fit the height to the savings, and name the curves `shown`."""
         lasso = curves.fdp["lasso"]
         saved = {key: lasso - curves.fdp[key] for key in SAVING if key in shown}
-        for key, lines in self._lines.items():
-            for line in lines:
-                line.visible = key in shown
         most = max((float(np.nanmax(each)) for each in saved.values()), default=0.0)
         height = next(each for each in _HEIGHTS if most <= 0.95 * each or each == 1.0)
         if self.canvas.figure.y_range.end != height:

@@ -5,7 +5,7 @@ from typing import Any
 import numpy as np
 from bokeh.models import ColumnDataSource
 
-from app.plots.canvas import Borders, Canvas, Word, put, word_columns
+from app.plots.canvas import Borders, Canvas, Word, draw, put, word_columns
 from app.words import typed
 from engine.normal import Array
 
@@ -55,11 +55,14 @@ class SiblingsPlot:
         canvas.words(self.names, text_font_size="11px", padding=1)
         canvas.dot(target, 11)
 
-    def show(self, tpp: Array, curves: tuple[Array, ...], own_value: float, own: Array) -> None:
-        """Draw the curves along `tpp`, and name them and the study's own."""
+    def show(self, tpp: Array, curves: tuple[Array, ...]) -> None:
+        """Draw the curves along `tpp`."""
         if curves is not self._drawn:
-            self.curves.data = {"tpp": tpp, **dict(zip(self._keys, curves, strict=True))}
+            draw(self.curves, {"tpp": tpp, **dict(zip(self._keys, curves, strict=True))})
             self._drawn = curves
+
+    def name(self, tpp: Array, curves: tuple[Array, ...], own_value: float, own: Array) -> None:
+        """Name the curves, and the study's own."""
         named = [
             (value, curve)
             for value, curve in zip(self._values, curves, strict=True)

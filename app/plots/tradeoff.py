@@ -7,7 +7,7 @@ from bokeh.models import ColumnDataSource
 
 from app.kept import Mark
 from app.plots.boundaries import DRAWN, SAVING, Boundaries
-from app.plots.canvas import Canvas, Word, put, word_columns
+from app.plots.canvas import Canvas, Word, draw, put, word_columns
 from app.plots.loupe import Loupe
 from app.reach import Curves, Reach
 from app.theme import STROKES
@@ -52,23 +52,30 @@ class TradeoffPlane:
         """The Bokeh figure."""
         return self.canvas.figure
 
-    def show_curves(self, curves: Curves, shown: tuple[str, ...], hatched: str) -> None:
-        """Draw the boundaries `shown`, and hatch where the penalty `hatched` cannot get."""
+    def choose(self, shown: tuple[str, ...], hatched: str) -> None:
+        """Draw the boundaries `shown`, and hatch in the colour of `hatched`."""
+        for boundaries in (self._boundaries, self.loupe.boundaries):
+            boundaries.choose(shown, STROKES[hatched].colour)
+
+    def show_curves(self, curves: Curves, hatched: str) -> None:
+        """Draw the boundaries, and hatch where the penalty `hatched` cannot get."""
         none = np.isnan(curves.fdp[hatched])
         # Beyond the power limit nothing is in the lasso's reach; an open curve hatches nothing.
         fill = 1.0 if hatched == "lasso" else 0.0
-        for boundaries in (self._boundaries, self.loupe.boundaries):
-            boundaries.choose(shown, STROKES[hatched].colour)
         lasso = curves.fdp["lasso"]
-        self.curves.data = {
+        columns = {
             "tpp": curves.tpp,
             "hatch": np.where(none, fill, curves.fdp[hatched]),
             **curves.fdp,
             **{f"saved-{key}": lasso - curves.fdp[key] for key in SAVING},
         }
+        draw(self.curves, columns)
+
+    def show_names(self, curves: Curves, shown: tuple[str, ...]) -> None:
+        """Name the lasso; the names of the others stand at their ends."""
         put(self.names, word_columns(_lasso_name(curves) if "lasso" in shown else ()))
 
-    def show_reach(self, reach: Reach, shown: tuple[str, ...]) -> None:
+    def show_reach(self, reach: Reach) -> None:
         """Draw the target, the power limit and picking at random."""
         u, q, limit = reach.tpp, reach.fdp, reach.power_limit
         random = reach.random_fdp
@@ -85,6 +92,9 @@ class TradeoffPlane:
         upright = {"x": [limit, limit], "y": [0.0, 1.0]}
         put(self.limit, upright if limit < 1.0 else {"x": [], "y": []})
         put(self.target, {"x": [u], "y": [q]})
+
+    def explain(self, reach: Reach, shown: tuple[str, ...]) -> None:
+        """Put words beside the lines, and the loupe where the target is."""
         self.loupe.show(reach, shown)
         chance = _random_note(reach, at_right=self.loupe.side == "left")
         put(self.notes, word_columns([*_limit_notes(reach), chance, *_closed(reach)]))

@@ -55,16 +55,20 @@ class ReachView:
             on_move=partial(self._drag, SAMPLING_RATIO, SPARSITY), on_hold=self.phase.hold,
         )  # fmt: skip
         watch = session.param.watch
-        watch(self._show_curves, ["curves", "hatched", "shown"])
-        watch(self._show_siblings, ["siblings", "curves"])
+        later = afterwards.put_off
+        watch(self._show_choice, ["hatched", "shown"])
+        watch(self._show_curves, ["curves", "hatched"])
+        watch(self._show_siblings, ["siblings"])
+        watch(later(self._show_names), ["curves", "shown"])
         watch(self._show_needs, ["needs", "hatched", "shown"])
-        watch(self._show_reach, ["reach", "problem", "shown"])
-        watch(self._show_stand_in, ["reach", "problem", "kept_as", "keeping"])
-        watch(afterwards.put_off(self._show_ends), ["reach", "shown"])
+        watch(self._show_reach, ["reach", "problem"])
+        watch(later(self._explain), ["reach", "problem", "shown", "kept_as", "keeping"])
+        watch(later(self._show_ends), ["reach", "shown"])
         watch(self._show_kept, ["curves"])
         session.kept.param.watch(self._show_kept, ["points"])
         watch(self._repaint, ["theme"])
         self._repaint()
+        self._show_choice()
 
     def roots(self) -> dict[str, Any]:
         """Everything the page places, by name."""
@@ -94,18 +98,34 @@ class ReachView:
 
     # ---- what the session changes
 
+    def _show_choice(self, *_: Any) -> None:
+        session = self._session
+        for plane in (self.tradeoff, self.phase):
+            plane.choose(session.shown, session.hatched)
+        self.saved.choose(session.shown)
+
     def _show_curves(self, *_: Any) -> None:
         session = self._session
-        if session.curves is not None and session.reach is not None:
-            self.tradeoff.show_curves(session.curves, session.shown, session.hatched)
-            self.saved.show(session.curves, session.shown, session.reach.power_limit)
+        if session.curves is not None:
+            self.tradeoff.show_curves(session.curves, session.hatched)
 
     def _show_siblings(self, *_: Any) -> None:
-        found, reach, curves = self._session.siblings, self._session.reach, self._session.curves
-        if found is not None and reach is not None and curves is not None:
+        found = self._session.siblings
+        if found is not None:
+            self.by_sparsity.show(found.tpp, found.by_sparsity)
+            self.by_ratio.show(found.tpp, found.by_ratio)
+
+    def _show_names(self) -> None:
+        session = self._session
+        found, reach, curves = session.siblings, session.reach, session.curves
+        if reach is None or curves is None:
+            return
+        self.tradeoff.show_names(curves, session.shown)
+        self.saved.show(curves, session.shown, reach.power_limit)
+        if found is not None:
             own = np.interp(found.tpp, curves.tpp, curves.fdp["sorted-l1"])
-            self.by_sparsity.show(found.tpp, found.by_sparsity, reach.sparsity, own)
-            self.by_ratio.show(found.tpp, found.by_ratio, reach.sampling_ratio, own)
+            self.by_sparsity.name(found.tpp, found.by_sparsity, reach.sparsity, own)
+            self.by_ratio.name(found.tpp, found.by_ratio, reach.sampling_ratio, own)
 
     def _show_needs(self, *_: Any) -> None:
         session = self._session
@@ -115,18 +135,21 @@ class ReachView:
     def _show_reach(self, *_: Any) -> None:
         session = self._session
         if session.reach is not None and session.problem is None:
-            self.tradeoff.show_reach(session.reach, session.shown)
+            self.tradeoff.show_reach(session.reach)
             self.phase.show_study(session.reach)
 
-    def _show_stand_in(self, *_: Any) -> None:
+    def _explain(self) -> None:
         session = self._session
         reach, curves = session.reach, session.curves
-        if reach is not None and curves is not None and session.problem is None:
-            aim = (reach.tpp, reach.fdp)
-            point = stand_in(curves, session.kept_as, *aim, session.keeping)
-            self.tradeoff.show_stand_in(point, aim)
+        if reach is None or curves is None or session.problem is not None:
+            return
+        self.tradeoff.explain(reach, session.shown)
+        self.phase.explain()
+        aim = (reach.tpp, reach.fdp)
+        point = stand_in(curves, session.kept_as, *aim, session.keeping)
+        self.tradeoff.show_stand_in(point, aim)
 
-    def _show_ends(self, *_: Any) -> None:
+    def _show_ends(self) -> None:
         session = self._session
         reach = session.reach
         if reach is not None:

@@ -20,12 +20,13 @@ def test_engine_ratios(measured, i):
     )
 
 
-def test_a_slider_step_takes_little_more_than_a_bare_page():
-    """The best of three runs: whatever else the machine does only ever adds to a step."""
-    runs = []
+def test_a_step_of_slider_or_handle_takes_little_more_than_a_bare_page():
+    """Each ratio at its best of three runs: what else the machine does only ever adds to it."""
+    best: dict[str, float] = {}
     for _ in range(3):
         ratios = latency_ratios()
-        runs.append([(ratio.what, round(ratio.value, 3)) for ratio in ratios])
-        if all(ratio.kept for ratio in ratios):
+        for ratio in ratios:
+            best[ratio.what] = min(ratio.value, best.get(ratio.what, ratio.value))
+        if all(best[ratio.what] <= ratio.bound for ratio in ratios):
             return
-    pytest.fail(f"no run kept the ratio: {runs}")
+    pytest.fail(f"not kept in three runs: {best}")

@@ -162,7 +162,7 @@ def test_bad_input_names_field_rule_and_value(open_page, demo_url, field, text, 
     page.keyboard.press("Enter")
     expect(page.locator(".sheet.verdict .problem")).to_contain_text(message)
     expect(page.locator(field)).to_have_attribute("aria-invalid", "true")
-    expect(page.locator(".planes")).to_have_class("planes card wrong")
+    expect(page.locator(".page.reach")).to_have_class("page reach wrong")
     assert str(data(page, "tradeoff-curves")) == str(before)  # the last good picture stays
     page.locator("#tpp").fill("0.5")
     page.keyboard.press("Enter")
