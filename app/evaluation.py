@@ -16,25 +16,29 @@ from bokeh.document import Document
 from panel.io import hold
 
 from app.components.loading import when_loaded
-from app.reach import Curves, Reach, Target, exact
+from app.reach import exact
 
 __all__ = ["Evaluate", "evaluator", "start_workers"]
 
-Done = Callable[[Reach, Curves], None]
-Evaluate = Callable[[Target, Done], None]
+# What is to be evaluated, and what receives the answer; both belong to the work.
+Done = Callable[..., None]
+Evaluate = Callable[[Any, Done], None]
 
 # A pause of the hand: shorter ones would start work that the next move throws away.
 REST_MS = 120
 
+# Two: a long answer on one page does not hold up a short one on another.
+_WORKERS = 2
 
-def evaluator(doc: Document) -> Evaluate:
-    """Return the function that a session asks for exact values.
 
-    It waits until the study and its target have rested for `REST_MS`, evaluates in a worker,
-    and calls `done` on the session's own event loop. Before the page has loaded it only
-    remembers the request (see `app.components.loading`).
+def evaluator(doc: Document, work: Callable[..., tuple[Any, ...]]) -> Evaluate:
+    """Return the function that a session asks for the answers of some work.
+
+    It waits until what is asked has rested for `REST_MS`, runs the work in a worker with the
+    request as its argument, and calls `done` with the answer on the session's own event loop.
+    Before the page has loaded it only remembers the request (see `app.components.loading`).
     """
-    requests = _Requests(doc)
+    requests = _Requests(doc, work)
     when_loaded(requests.open)
     return requests.take
 
@@ -42,10 +46,11 @@ def evaluator(doc: Document) -> Evaluate:
 class _Requests:
     """The requests of one session; the latest counts."""
 
-    def __init__(self, doc: Document) -> None:
+    def __init__(self, doc: Document, work: Callable[..., tuple[Any, ...]]) -> None:
         self._doc = doc
+        self._work = work
         self._loaded = False
-        self._latest: tuple[Target, Done] | None = None
+        self._latest: tuple[Any, Done] | None = None
 
     def open(self) -> None:
         """Start what was asked for while the page was loading."""
@@ -53,18 +58,18 @@ class _Requests:
         if self._latest is not None:
             self._start(self._latest)
 
-    def take(self, target: Target, done: Done) -> None:
+    def take(self, target: Any, done: Done) -> None:
         """Evaluate `target` when it has rested."""
         request = self._latest = (target, done)
         if self._loaded:
             self._doc.add_timeout_callback(partial(self._start, request), REST_MS)
 
-    def _start(self, request: tuple[Target, Done], tries: int = 2) -> None:
+    def _start(self, request: tuple[Any, Done], tries: int = 2) -> None:
         if request is self._latest and tries:
             finish = partial(self._finish, request, tries - 1)
-            submit(exact, request[0]).add_done_callback(finish)
+            submit(self._work, request[0]).add_done_callback(finish)
 
-    def _finish(self, request: tuple[Target, Done], tries: int, future: Future[Any]) -> None:
+    def _finish(self, request: tuple[Any, Done], tries: int, future: Future[Any]) -> None:
         """Runs in a thread of the pool: only hands over to the session's event loop."""
         if future.cancelled():
             return
@@ -73,16 +78,16 @@ class _Requests:
             return
         self._doc.add_next_tick_callback(partial(self._hand_over, request, *future.result()))
 
-    def _hand_over(self, request: tuple[Target, Done], reach: Reach, curves: Curves) -> None:
+    def _hand_over(self, request: tuple[Any, Done], *answer: Any) -> None:
         if request is self._latest:
             with hold(self._doc):
-                request[1](reach, curves)
+                request[1](*answer)
 
 
 @lru_cache(maxsize=1)
 def start_workers() -> ProcessPoolExecutor:
-    """Start the worker process, which imports `app.reach` and the engine but no pictures."""
-    pool = ProcessPoolExecutor(1, mp_context=multiprocessing.get_context("spawn"))
+    """Start the worker processes, which import the engine and `app.reach` but no pictures."""
+    pool = ProcessPoolExecutor(_WORKERS, mp_context=multiprocessing.get_context("spawn"))
     pool.submit(exact, (30, 100, 20, 0.5, 0.5))  # the first answer pays for the imports
     atexit.register(pool.shutdown, cancel_futures=True)
     return pool

@@ -2,6 +2,13 @@
 // when the connection is lost.
 
 const tabs = [...document.querySelectorAll("[role=tab]")]
+// Python computes what the open page shows.
+function tell(name) {
+  const field = everywhere("input[data-do=page]")[0]
+  if (!field) return
+  field.value = name
+  field.dispatchEvent(new Event("change", {bubbles: true}))
+}
 function open_page(tab) {
   for (const other of tabs) {
     const chosen = other === tab
@@ -9,6 +16,9 @@ function open_page(tab) {
     other.tabIndex = chosen ? 0 : -1
     document.getElementById(other.getAttribute("aria-controls")).hidden = !chosen
   }
+  const name = tab.getAttribute("aria-controls")
+  document.body.dataset.page = name
+  tell(name)
   const hash = tab === tabs[0] ? "" : `#${tab.getAttribute("aria-controls")}`
   history.replaceState(null, "", location.pathname + location.search + hash)
   window.dispatchEvent(new Event("resize"))
@@ -64,6 +74,11 @@ const watching = setInterval(() => {
   const doc = window.Bokeh?.documents?.[0]
   if (!doc) return
   clearInterval(watching)
+  const telling = setInterval(() => {
+    if (!everywhere("input[data-do=page]").length) return
+    clearInterval(telling)
+    tell(document.body.dataset.page)
+  }, 50)
   doc.on_event("connection_lost", () => { lost.hidden = false })
   doc.on_event("client_reconnected", () => { lost.hidden = true })
 }, 100)

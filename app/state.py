@@ -29,6 +29,7 @@ from engine.study import (
     Effect,
     Study,
     check_actives,
+    effects_from,
     load_study,
 )
 from engine.study import Target as StudyTarget
@@ -43,9 +44,6 @@ class Problem:
     field: str
     message: str
 
-
-# What a session believes until a study file says otherwise; Reach does not use it.
-_BELIEF: dict[str, Any] = {"noise_sd": 1.0, "effects": (Effect(size=0.2, share=1.0),)}
 
 _COUNTS = ("runs", "candidates", "actives")
 # The count that a ratio, times the candidates, stands for.
@@ -68,6 +66,10 @@ class Session(param.Parameterized):
     actives = param.Integer(default=None, allow_None=True)
     tpp = param.Number(default=0.8)
     fdp = param.Number(default=0.2)
+
+    # Believed until a study says otherwise; Reach does not use them.
+    noise_sd = param.Number(default=1.0)
+    effects = param.Parameter(default=(Effect(size=0.2, share=1.0),))
 
     keeps_counts = param.Boolean(default=True, doc="What new candidates leave as it is.")
     shown = param.Parameter(default=tuple(FAMILIES), doc="Penalties whose curves are drawn.")
@@ -95,7 +97,6 @@ class Session(param.Parameterized):
         self._atlas, self._contours = atlas, contours
         self.typed: frozenset[str] = frozenset()  # fields of the last change that held texts
         self._evaluate = evaluate
-        self._belief = dict(_BELIEF)
         self._aim: tuple[float, float] | None = None  # the target that `needs` stands for
 
     # ---- the study and its target
@@ -115,11 +116,23 @@ class Session(param.Parameterized):
 
     def open_study(self, study: Study) -> None:
         """Take everything from `study`; its target too, when it has one."""
-        self._belief = {"noise_sd": study.noise_sd, "effects": study.effects}
-        values = {name: getattr(study, name) for name in _COUNTS} | {"title": study.title}
+        names = (*_COUNTS, "title", "noise_sd", "effects")
+        values: dict[str, Any] = {name: getattr(study, name) for name in names}
         if study.target is not None:
             values |= {"tpp": study.target.tpp, "fdp": study.target.fdp}
         self._take(values)
+
+    def believe(self, effects: list[dict[str, Any]]) -> None:
+        """Take a list of effects as a study file holds it (numbers, or texts as typed)."""
+        rows = [
+            {key: _typed_number(value) for key, value in effect.items()} for effect in effects
+        ]
+        try:
+            believed = effects_from(rows)
+        except ValueError as error:
+            self.problem = Problem("effects", str(error))
+            return
+        self._take({"effects": believed})
 
     def study(self) -> Study | None:
         """Return the study as it stands; None while a count is missing."""
@@ -127,7 +140,8 @@ class Session(param.Parameterized):
         if None in counts.values():
             return None
         target = StudyTarget(tpp=self.tpp, fdp=self.fdp)
-        return Study(title=self.title, **counts, **self._belief, target=target)
+        belief = {"noise_sd": self.noise_sd, "effects": self.effects}
+        return Study(title=self.title, **counts, **belief, target=target)
 
     def open_example(self) -> None:
         """Open the demo study."""
@@ -268,13 +282,18 @@ class Session(param.Parameterized):
 def _number(name: str, value: Any) -> float:
     """Return a typed text, or a number from the browser, checked by its quantity's rule."""
     quantity = QUANTITIES[name]
-    if isinstance(value, str):
-        text = value.strip().replace("\u202f", "").replace("\u00a0", "").replace(" ", "")
-        try:
-            value = int(text) if quantity.whole else float(text)
-        except ValueError:
-            value = value.strip()
-    return quantity.check(value)
+    return quantity.check(_typed_number(value, quantity.whole))
+
+
+def _typed_number(value: Any, whole: bool = False) -> Any:
+    """Return the number that a text holds; other texts as they are, for a check to refuse."""
+    if not isinstance(value, str):
+        return value
+    text = value.strip().replace("\u202f", "").replace("\u00a0", "").replace(" ", "")
+    try:
+        return int(text) if whole else float(text)
+    except ValueError:
+        return value.strip()
 
 
 def _as_count(name: str, ratio: float, candidates: int | None) -> int:

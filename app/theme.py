@@ -71,6 +71,7 @@ class Stroke:
 STROKES = {
     "lasso": Stroke("lasso", (), 2.5, "3px solid"),
     "two-level-closed-form": Stroke("two_level", (2, 3), 2.0, "2px dotted"),
+    "ramp": Stroke("ramp", (3, 3), 2.5, "3px dotted"),
     "two-level": Stroke("two_level", (9, 4), 2.5, "3px dashed"),
     "sorted-l1": Stroke("sorted_l1", (), 6.0, "5px double", double=2.2),
 }

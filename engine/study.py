@@ -33,6 +33,7 @@ __all__ = [
     "Target",
     "check_actives",
     "check_shares",
+    "effects_from",
     "load_study",
     "study_from",
 ]
@@ -159,7 +160,7 @@ def study_from(data: Any, where: str = "") -> Study:
         title=check_text(data.get("title", ""), at + "title", TITLE_LENGTH),
         **counts,
         noise_sd=NOISE_SD.check(data["noise_sd"], at + "noise_sd"),
-        effects=_effects(data["effects"], at + "effects"),
+        effects=effects_from(data["effects"], at + "effects"),
         target=_target(data["target"], at + "target") if "target" in data else None,
     )
 
@@ -179,7 +180,8 @@ def check_shares(shares: list[float], where: str) -> None:
         raise ValueError(f"{where} must have shares that sum to 1, not {total:.10g}")
 
 
-def _effects(data: Any, where: str) -> tuple[Effect | Spread, ...]:
+def effects_from(data: Any, where: str = "effects") -> tuple[Effect | Spread, ...]:
+    """Return the effects that a JSON value describes."""
     effects = tuple(
         _effect(entry, f"{where}[{i}]")
         for i, entry in enumerate(check_list(data, where, 1, MOST_EFFECTS))

@@ -1,5 +1,6 @@
 """The page as a whole: one session, its views, and the frame around them."""
 
+from functools import partial
 from pathlib import Path
 from typing import Any
 from urllib.parse import quote
@@ -12,12 +13,16 @@ from app.coalesce import Coalescer
 from app.components.sheet import Sheet
 from app.evaluation import evaluator
 from app.link import open_link, query_of
+from app.looking import Looking
+from app.outlook import COMPARED, comparators, outlook
+from app.reach import exact
 from app.ready import ready_atlas, ready_contours
 from app.state import Session
 from app.theme import css_variables
 from app.views.answer import AnswerView
 from app.views.reach import ReachView
 from app.views.shortlist import ShortlistView
+from app.views.signal import SignalView
 from app.views.study import StudyRail
 from engine.files import STUDY_BYTES
 from engine.study import Study
@@ -38,13 +43,16 @@ _MARK = (
 def page(study: Study | None) -> pn.Template:
     """Build the page of a new session, opened on `study`."""
     doc = pn.state.curdoc
-    session = Session(evaluator(doc), ready_atlas(), ready_contours())
+    session = Session(evaluator(doc, exact), ready_atlas(), ready_contours())
     inbox = Coalescer(doc, session.propose)
     afterwards = Afterwards(doc)
     reach = ReachView(session, inbox, afterwards)
     reach.tradeoff.loupe.attach(doc)
     rail = StudyRail(session, inbox, afterwards)
     answer = AnswerView(session, afterwards)
+    families = {family: evaluator(doc, partial(outlook, family)) for family in COMPARED}
+    looking = Looking(session, families | {"comparators": evaluator(doc, comparators)})
+    signal = SignalView(session, looking, inbox, afterwards, reach.tradeoff.curves)
     shortlist = ShortlistView(session)
     frame = _Frame(session)
     query = {name: values[-1].decode() for name, values in pn.state.session_args.items()}
@@ -55,7 +63,7 @@ def page(study: Study | None) -> pn.Template:
     template = pn.Template((_HERE / "page.html").read_text())
     for name, root in {
         **frame.roots(), **rail.roots(), **reach.roots(), **answer.roots(),
-        **shortlist.roots(),
+        **signal.roots(), **shortlist.roots(),
     }.items():  # fmt: skip
         template.add_panel(name, root)
     for name, text in _variables(session).items():

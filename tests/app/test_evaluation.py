@@ -10,6 +10,7 @@ import pytest
 
 from app import evaluation
 from app.evaluation import _Requests, start_workers, submit
+from app.reach import exact
 
 TARGET = (60, 200, 40, 0.8, 0.75)
 
@@ -56,7 +57,7 @@ def finish(loop):
 
 def test_a_request_made_before_the_page_has_loaded_is_answered_after(pool):
     loop, answers = Loop(), []
-    requests = _Requests(loop)
+    requests = _Requests(loop, exact)
     requests.take(TARGET, lambda *answer: answers.append(answer))
     finish(loop)
     assert answers == []
@@ -69,7 +70,7 @@ def test_a_request_made_before_the_page_has_loaded_is_answered_after(pool):
 
 def test_only_the_latest_request_is_answered(pool):
     loop, answers = Loop(), []
-    requests = _Requests(loop)
+    requests = _Requests(loop, exact)
     requests.open()
     for runs in (60, 70, 80):
         requests.take((runs, *TARGET[1:]), lambda reach, curves: answers.append(reach.runs))
@@ -80,7 +81,7 @@ def test_only_the_latest_request_is_answered(pool):
 def test_a_request_whose_worker_died_is_made_once_more(monkeypatch):
     """The pool says 'broken' for the job of a killed worker, and for all it gets after."""
     loop, answers, asked = Loop(), [], []
-    requests = _Requests(loop)
+    requests = _Requests(loop, exact)
     requests.open()
 
     def submit_(function, target):
@@ -102,7 +103,7 @@ def test_a_request_whose_worker_died_is_made_once_more(monkeypatch):
 
 def test_it_gives_up_after_the_second_try(monkeypatch):
     loop, asked = Loop(), []
-    requests = _Requests(loop)
+    requests = _Requests(loop, exact)
     requests.open()
 
     def submit_(function, target):
@@ -121,7 +122,7 @@ def test_it_gives_up_after_the_second_try(monkeypatch):
 def test_a_killed_worker_is_replaced(pool):
     """A real one, killed between two requests."""
     loop, answers = Loop(), []
-    requests = _Requests(loop)
+    requests = _Requests(loop, exact)
     requests.open()
     os.kill(submit(os.getpid).result(30), signal.SIGKILL)
     requests.take(TARGET, lambda *answer: answers.append(answer))
