@@ -266,7 +266,7 @@ LEVEL = Quantity(
 )  # fmt: skip
 RANK_SHARE = Quantity(
     "share", "Share of the ranks", "", "share of the candidates",
-    "Share of the ranks that has the larger of two levels",
+    "Two levels: the share of the ranks that has the larger one",
     0.0, 1.0, low_open=True, slider=(0.01, 1.0),
 )  # fmt: skip
 RAMP_LEVEL = Quantity(

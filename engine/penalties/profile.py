@@ -13,7 +13,7 @@ from collections.abc import Callable
 import numpy as np
 from scipy.optimize import isotonic_regression
 
-from engine.limits.least_risk import fold
+from engine.limits.least_risk import Folded, fold
 from engine.normal import Array
 from engine.penalties.penalty import Law, RankedWeights, Shape
 
@@ -30,6 +30,7 @@ def profile_shape(
     profile: Callable[[Array], Array],
     finite: RankedWeights,
     ramp_level: float | None = None,
+    folded: Folded | None = None,
 ) -> Shape:
     """Return the shrinkage with a zero threshold of weights proportional to a profile.
 
@@ -39,9 +40,11 @@ def profile_shape(
         Weight at the ranks that stand the shares r in (0, 1) from the top; nonincreasing.
     finite : callable
         The same weights at ranks of p candidates.
+    folded : Folded, optional
+        |pi + Z| past the threshold, where it is known already.
     """
-    folded = fold(threshold, law.sizes.tolist(), law.masses.tolist())
-    past = law.beyond(folded.x)
+    folded = folded or fold(threshold, law.sizes.tolist(), law.masses.tolist())
+    past = folded.past
     unit = float(profile(past[:1])[0])
     strength = threshold / unit if unit > 0.0 else np.inf
     if not np.isfinite(strength):

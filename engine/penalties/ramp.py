@@ -9,6 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.special import ndtri
 
+from engine.limits.least_risk import Folded, fold
 from engine.normal import Array
 from engine.penalties.penalty import Law, Penalty, Shape
 from engine.penalties.profile import profile_shape
@@ -39,12 +40,17 @@ class Ramp:
 
     def shape(self, threshold: float, law: Law) -> Shape:
         """Return the shrinkage with this zero threshold."""
+        return self.shape_on(threshold, law, None)
+
+    def shape_on(self, threshold: float, law: Law, folded: Folded | None) -> Shape:
+        """Return the same where the law has been folded at the threshold already."""
         return profile_shape(
             threshold,
             law,
             lambda r: np.abs(ndtri(np.clip(0.5 * self.level * r, 1e-300, 0.5))),
             lambda ranks, p: critical_values(self.level, ranks, p),
             self.level,
+            folded,
         )
 
 
@@ -64,12 +70,14 @@ class TunedRamp:
     def tune(self, threshold: float, law: Law, near: Penalty | None) -> Ramp:
         """Return the admissible ramp of least risk with this zero threshold."""
 
+        folded = fold(threshold, law.sizes.tolist(), law.masses.tolist())
+
         def cost(exponent: float) -> tuple[bool, float]:
-            shape = Ramp(10.0**exponent).shape(threshold, law)
+            shape = Ramp(10.0**exponent).shape_on(threshold, law, folded)
             return not shape.admissible, shape.risk
 
         if isinstance(near, Ramp):
-            best, stride = float(np.log10(near.level)), _STRIDE / 4.0
+            best, stride = float(np.log10(near.level)), _STRIDE / 8.0
             least = cost(best)
         else:
             least, best = min((cost(exponent), exponent) for exponent in _FIRST)
