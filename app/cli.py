@@ -16,6 +16,7 @@ from typing import Any, NoReturn
 import numpy as np
 
 from app.atlas_command import add_atlas, atlas
+from app.predict_command import WEIGHTS_BYTES, add_predict, answer_of, forecast, table_of
 from engine.files import SHORTLIST_BYTES, STUDY_BYTES
 from engine.limits.families import FAMILIES
 from engine.limits.transition import critical_sparsity, power_limit
@@ -192,6 +193,23 @@ def _or_none(value: float) -> float | None:
     return None if math.isnan(value) else value
 
 
+# ---- predict
+
+
+def _predict(options: argparse.Namespace) -> int:
+    """Predict what a penalty and a selection rule find in a study."""
+    study = _study(options.file)
+    weights = None
+    if options.weights is not None:
+        weights = _checked(bytes, options.weights, WEIGHTS_BYTES)
+    try:
+        found = forecast(study, options, weights)
+    except ValueError as error:
+        raise InputError(str(error)) from None
+    print(json.dumps(answer_of(found)) if options.json else f"{table_of(found)}\n\n{CAUTION}")
+    return 0
+
+
 # ---- shortlist
 
 
@@ -214,6 +232,7 @@ def _shortlist(options: argparse.Namespace) -> int:
 
 _COMMANDS: dict[str, tuple[Callable[..., None], Callable[..., int]]] = {
     "limits": (_add_limits, _limits),
+    "predict": (add_predict, _predict),
     "shortlist": (_add_shortlist, _shortlist),
     "atlas": (add_atlas, atlas),
 }

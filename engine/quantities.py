@@ -17,12 +17,17 @@ __all__ = [
     "CALIBRATION",
     "CANDIDATES",
     "CRITICAL_SPARSITY",
+    "CUT",
     "EFFECT_SCALE",
     "EFFECT_SIZE",
     "FDP",
+    "LAMBDA",
+    "LEVEL",
     "NOISE_SD",
     "POWER_LIMIT",
     "QUANTITIES",
+    "RAMP_LEVEL",
+    "RANK_SHARE",
     "RISK",
     "RUNS",
     "SAMPLING_RATIO",
@@ -243,6 +248,31 @@ SLOPE = Quantity(
     "slope", "Slope", "E η'", "per candidate",
     "Limit of the number of distinct nonzero sizes in the fit, per candidate",
     0.0, 1.0,
+)  # fmt: skip
+LAMBDA = Quantity(
+    "lambda", "Strength", "λ", "unit of the response",
+    "Largest weight of the penalty, on columns of length one",
+    0.0, math.inf, low_open=True, slider=(0.1, 100.0), scale="log",
+)  # fmt: skip
+CUT = Quantity(
+    "cut", "Cut", "c", "tau",
+    "Debiased estimates that are larger than this are selected",
+    0.0, math.inf, slider=(0.0, 6.0),
+)  # fmt: skip
+LEVEL = Quantity(
+    "level", "Level", "", "tau",
+    "One of two weights; their ratio counts, the strength scales both",
+    0.0, math.inf, slider=(0.0, 6.0),
+)  # fmt: skip
+RANK_SHARE = Quantity(
+    "share", "Share of the ranks", "", "share of the candidates",
+    "Two levels: the share of the ranks that has the larger one",
+    0.0, 1.0, low_open=True, slider=(0.01, 1.0),
+)  # fmt: skip
+RAMP_LEVEL = Quantity(
+    "ramp_level", "Ramp level", "q", "",
+    "Level of the Benjamini-Hochberg critical values that the weights follow",
+    0.0, 1.0, low_open=True, high_open=True, slider=(0.01, 0.99),
 )  # fmt: skip
 CRITICAL_SPARSITY = Quantity(
     "critical_sparsity", "Critical sparsity", "ε*", "actives per candidate",

@@ -18,6 +18,7 @@ so the best A is the nondecreasing regression of x - m(x) with weights w(x), rai
 where it is lower. Its slope stays within [0, 1] by itself, because the posterior mean m rises.
 """
 
+from collections.abc import Sequence
 from functools import lru_cache
 from typing import NamedTuple
 
@@ -26,7 +27,7 @@ from scipy.optimize import isotonic_regression
 
 from engine.normal import Array
 
-__all__ = ["Shrinkage", "least_risk"]
+__all__ = ["Folded", "Shrinkage", "fold", "least_risk"]
 
 # The integrand has a jump in its second derivative where a pooled stretch ends, so the error
 # falls with the cube of the spacing whatever the rule, and even spacing keeps it smallest:
@@ -78,9 +79,7 @@ class Shrinkage(NamedTuple):
         return 0.5 * (self.risk - self.energy + beyond)
 
 
-def least_risk(
-    threshold: float, sizes: tuple[float, ...], masses: tuple[float, ...]
-) -> Shrinkage:
+def least_risk(threshold: float, sizes: Sequence[float], masses: Sequence[float]) -> Shrinkage:
     """Return the sorted-L1 shrinkage of least risk for a law with finite atoms.
 
     The arguments are trusted.
@@ -89,7 +88,7 @@ def least_risk(
     ----------
     threshold : float
         Zero threshold alpha >= 0, in units of tau.
-    sizes, masses : tuple of float
+    sizes, masses : sequence of float
         Effects t_j >= 0 in units of tau, and the share p_j of the candidates at each. The
         other candidates have no effect.
 
@@ -98,6 +97,49 @@ def least_risk(
     >>> from engine.limits.least_risk import least_risk
     >>> round(least_risk(1.0, (1.4,), (0.2,)).risk, 4)
     0.286
+    """
+    folded = fold(threshold, sizes, masses)
+    aim = folded.x - folded.mean
+    pooled = isotonic_regression(aim, weights=folded.mass).x
+    return folded.shrinkage(np.maximum(pooled, threshold))
+
+
+class Folded(NamedTuple):
+    """|pi + Z| past a threshold: nodes, the candidates each stands for, posterior means.
+
+    `energy` is E pi^2, of all candidates.
+    """
+
+    threshold: float
+    energy: float
+    x: Array
+    mass: Array
+    mean: Array
+
+    @property
+    def past(self) -> Array:
+        """P(|pi + Z| > x) at the nodes: the trapezium rule and its first correction."""
+        plain = self.mass.copy()
+        plain[: _END.size] /= _END
+        rising = np.gradient(plain) / 12.0
+        sums: Array = np.cumsum(plain[::-1])[::-1] - 0.5 * plain + rising
+        return np.maximum(sums, 0.0)
+
+    def shrinkage(self, withheld: Array) -> Shrinkage:
+        """Return the shrinkage x - `withheld` with its risk."""
+        excess = withheld - (self.x - self.mean)
+        risk = self.energy + float(self.mass @ (excess * excess - self.mean * self.mean))
+        return Shrinkage(self.threshold, risk, self.energy, self.x, self.mass, withheld)
+
+
+def fold(threshold: float, sizes: Sequence[float], masses: Sequence[float]) -> Folded:
+    """Return |pi + Z| past the threshold for a law with finite atoms.
+
+    Examples
+    --------
+    >>> from engine.limits.least_risk import fold
+    >>> round(float(fold(0.0, (1.4,), (0.2,)).mass.sum()), 6)
+    1.0
     """
     offsets, widths = _nodes(max(max(sizes) - threshold, 0.0))
     x = threshold + offsets
@@ -112,13 +154,7 @@ def least_risk(
         w += plus + minus
         first = first + t * (plus - minus)
         energy += p * t * t
-    mean = first / w
-    mass = w * widths
-    aim = x - mean
-    withheld = np.maximum(isotonic_regression(aim, weights=mass).x, threshold)
-    excess = withheld - aim
-    risk = energy + float(mass @ (excess * excess - mean * mean))
-    return Shrinkage(threshold, risk, energy, x, mass, withheld)
+    return Folded(threshold, energy, x, w * widths, first / w)
 
 
 def _nodes(stretch: float) -> tuple[Array, Array]:

@@ -351,7 +351,7 @@ def test_the_help_names_the_other_commands_and_each_has_its_own(capsys):
         main(["--help"])
     listed = re.search(r"other commands: ([^(]*)", capsys.readouterr().out)[1]
     commands = [word.strip() for word in listed.split(",")]
-    assert commands == ["limits", "shortlist", "atlas"]
+    assert commands == ["limits", "predict", "shortlist", "atlas"]
     for command in commands:
         with pytest.raises(SystemExit):
             main([command, "--help"])
