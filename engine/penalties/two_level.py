@@ -166,7 +166,7 @@ class Pieces:
 
 # The first look at gaps and heights, and how often the neighbourhood of the best is zoomed.
 _COARSE, _FINE, _ZOOMS = 12, 5, 10
-_WIDEST_GAP = 6.0
+_GAPS = np.concatenate([[0.0], np.geomspace(0.05, 10.0, _COARSE - 1)])
 _OVER = 1e3  # outweighs any risk: a fit with more distinct sizes than runs does not exist
 
 
@@ -182,13 +182,15 @@ class TunedTwoLevel:
 
     def tune(self, threshold: float, law: Law, near: Penalty | None) -> Pieces:
         """Return the two-level shrinkage of least risk with this zero threshold."""
-        steps = np.array([0.5, (float(law.sizes.max()) + 3.0) / (_COARSE - 1)])
+        # There are two valleys, of narrow gaps and of gaps so wide that they cap the estimates:
+        # each strength is looked at afresh, so that none is followed into the wrong one.
+        spacing = (float(law.sizes.max()) + 3.0) / (_COARSE - 1)
+        best = self._best(threshold, _GAPS, spacing * np.arange(_COARSE), law)
+        steps = np.array([max(0.5, 0.4 * best[0]), spacing])
         if isinstance(near, Pieces):
-            best = near.gap, near.height
-            steps = np.minimum(steps, 0.25)
-        else:
-            gaps = np.concatenate([[0.0], np.geomspace(0.05, _WIDEST_GAP, _COARSE - 1)])
-            best = self._best(threshold, gaps, steps[1] * np.arange(_COARSE), law)
+            pair = np.array([best, (near.gap, near.height)])
+            if self._losses(threshold, *pair.T, law).argmin() == 1:
+                best, steps = (near.gap, near.height), np.minimum(steps, 0.25)
         for _ in range(_ZOOMS):
             around = np.linspace(-1.0, 1.0, _FINE)
             nearby_gaps = np.maximum(best[0] + steps[0] * around, 0.0)
@@ -203,6 +205,10 @@ class TunedTwoLevel:
 
     def _best(self, b: float, gaps: Array, heights: Array, law: Law) -> tuple[float, float]:
         gap, h = np.meshgrid(gaps, heights)
-        risk, slope = moments(b, gap, h, law)
-        i = int(np.argmin(risk + _OVER * np.maximum(slope - self.delta, 0.0)))
+        i = int(np.argmin(self._losses(b, gap, h, law)))
         return float(gap.flat[i]), float(h.flat[i])
+
+    def _losses(self, b: float, gap: Array, h: Array, law: Law) -> Array:
+        risk, slope = moments(b, gap, h, law)
+        loss: Array = risk + _OVER * np.maximum(slope - self.delta, 0.0)
+        return loss

@@ -49,10 +49,11 @@ def pool():
 
 
 def finish(loop):
-    """Run the loop until the worker has nothing more to say."""
-    for _ in range(6):
+    """Run the loop long enough for the workers to have said all they have to say."""
+    submit(int).result(30)  # a worker has started
+    for _ in range(30):
         loop.run()
-        submit(int).result(30)
+        time.sleep(0.05)
 
 
 def test_a_request_made_before_the_page_has_loaded_is_answered_after(pool):
