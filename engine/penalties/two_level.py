@@ -165,7 +165,7 @@ class Pieces:
 
 
 # The first look at gaps and heights, and how often the neighbourhood of the best is zoomed.
-_COARSE, _FINE, _ZOOMS = 12, 5, 10
+_COARSE, _FINE, _ZOOMS, _ZOOMS_NEAR = 12, 5, 10, 7
 _WIDEST_GAP = 6.0
 _OVER = 1e3  # outweighs any risk: a fit with more distinct sizes than runs does not exist
 
@@ -189,7 +189,7 @@ class TunedTwoLevel:
         else:
             gaps = np.concatenate([[0.0], np.geomspace(0.05, _WIDEST_GAP, _COARSE - 1)])
             best = self._best(threshold, gaps, steps[1] * np.arange(_COARSE), law)
-        for _ in range(_ZOOMS):
+        for _ in range(_ZOOMS if near is None else _ZOOMS_NEAR):
             around = np.linspace(-1.0, 1.0, _FINE)
             nearby_gaps = np.maximum(best[0] + steps[0] * around, 0.0)
             nearby_heights = np.maximum(best[1] + steps[1] * around, 0.0)
