@@ -15,7 +15,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from scipy.optimize import brentq
 
-from engine.normal import Array, selection, tail
+from engine.normal import Array, null_risk, selection, tail
 from engine.penalties.lasso import Lasso, soft_moments
 from engine.penalties.penalty import Branched, Law, Penalty, Shape, Tuned
 from engine.signal import SignalLaw
@@ -25,7 +25,7 @@ __all__ = ["State", "fdp_of", "law_at", "settle", "settle_all", "tpp_of"]
 # Smallest 1/tau looked at, as a share of 1/sigma: a fit with a thousand times more noise than
 # the runs have has none of the signal left.
 _LEAST = 1e-3
-_ACCURACY = 1e-9
+_ACCURACY = 1e-8
 
 # Tuning and tau take turns; a tau that moves less is found, for the error squares each turn.
 _ROUNDS, _SETTLED = 8, 1e-5
@@ -188,10 +188,13 @@ def _soft_inverses(law: SignalLaw, thresholds: Array) -> Array:
     """1/tau of the lasso at each threshold; nan where there is none.
 
     The risk of soft thresholding rises with every size, so that the equation has one root:
-    Newton's steps from 1/sigma down, halving whenever one leaves the interval.
+    Newton's steps from that of screening, halving whenever one leaves the interval.
     """
+    inverses = np.full(thresholds.shape, np.nan)
+    possible = null_risk(thresholds) < law.delta  # else the noise of the fit has no bound
+    thresholds = thresholds[possible]
     low, high = np.zeros_like(thresholds), np.full_like(thresholds, 1.0 / law.noise)
-    s = high.copy()
+    s = np.full_like(thresholds, (law.noise**2 + law.energy / law.delta) ** -0.5)
     at = thresholds[:, None]
     for _ in range(60):
         sizes = s[:, None] * law.sizes
@@ -206,4 +209,5 @@ def _soft_inverses(law: SignalLaw, thresholds: Array) -> Array:
         s = s_next
         if np.all((moved <= _ACCURACY * s) | (s < _LEAST / law.noise)):
             break
-    return np.where(s < _LEAST / law.noise, np.nan, s)
+    inverses[possible] = np.where(s < _LEAST / law.noise, np.nan, s)
+    return inverses

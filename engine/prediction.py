@@ -390,7 +390,7 @@ def _root(falling: Callable[[float], float], high: float) -> float:
 def _states(law: SignalLaw, penalty: Penalty, points: int) -> list[State]:
     top = top_threshold(law, _CURVE_END)
     low, high = 0.0, top
-    for looks in (17, 9, 9):  # the smallest admissible threshold, closer each time
+    for looks in (9, 5, 5):  # the smallest admissible threshold, closer each time
         tried = np.linspace(low, high, looks)
         states = settle_all(law, penalty, tried)
         i = next((i for i, state in enumerate(states) if state is not None), None)

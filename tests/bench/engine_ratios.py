@@ -15,10 +15,14 @@ from engine import lasso_boundary, sorted_l1_boundary, two_level_boundary
 from engine.limits.atlas_file import load_atlas
 from engine.limits.lasso_curve import lasso_curve
 from engine.limits.least_risk import least_risk
+from engine.prediction import curve
+from engine.study import Effect, Study
 
 __all__ = ["Ratio", "engine_ratios"]
 
 ROOT = Path(__file__).parents[2]
+
+STUDY = Study("", 600, 2000, 400, 1.0, (Effect(0.16, 0.6), Effect(0.32, 0.4)))
 
 
 @dataclass(frozen=True)
@@ -64,6 +68,10 @@ def engine_ratios() -> list[Ratio]:
          lambda: atlas.read("two-level", along, delta + 1e-7 * next(ratios_tried), eps)),
         ("exact two-level, 48 points", "isotonic_regression of 1,000", isotonic_1000, 15_000, 1,
          lambda: two_level_boundary(along, delta, eps)),
+        ("designed, curve for a signal, 60 points", "isotonic_regression of 1,000",
+         isotonic_1000, 6000, 1, lambda: curve(STUDY, "designed")),
+        ("tuned two-level, curve for a signal, 60 points", "isotonic_regression of 1,000",
+         isotonic_1000, 30_000, 1, lambda: curve(STUDY, "two-level")),
     )  # fmt: skip
     measured = [
         Ratio(what, yardstick, seconds(work, number) / unit, bound)
