@@ -1,8 +1,9 @@
-"""Pictures first: what may follow them leaves in a message of its own.
+"""The planes first: what may follow them leaves in a message of its own.
 
 A component of HTML costs the server half a millisecond, a figure's source a tenth of that, and
-words have to be laid out. So views let them wait until the pictures have left, and while the
-hand moves they follow some fifteen times a second.
+words have to be laid out; every picture takes its time to paint. So words and small pictures
+wait until the planes have left, and while the hand moves they follow some fifteen times a
+second.
 """
 
 import math

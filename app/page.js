@@ -1,6 +1,16 @@
 // What the page does by itself: tabs, the narrow screen's picture switch, the key K, and a word
 // when the connection is lost.
 
+// BokehJS writes the place of every glyph into a style element whenever it paints, mostly the
+// same place as before; a style that is written is parsed anew, and the page's with it. Leaving
+// unchanged ones alone halves the time of a frame.
+const written = Object.getOwnPropertyDescriptor(Node.prototype, "textContent")
+Object.defineProperty(HTMLStyleElement.prototype, "textContent", {
+  configurable: true,
+  get() { return written.get.call(this) },
+  set(text) { if (text !== written.get.call(this)) written.set.call(this, text) },
+})
+
 const tabs = [...document.querySelectorAll("[role=tab]")]
 // Python computes what the open page shows.
 function tell(name) {

@@ -4,13 +4,10 @@ from bokeh.models import ColumnDataSource
 
 from app.plots.canvas import Canvas
 
-__all__ = ["DRAWN", "SAVING", "Boundaries"]
+__all__ = ["DRAWN", "Boundaries"]
 
 # In the order they are drawn; later ones lie on top.
 DRAWN = ("sorted-l1", "two-level-closed-form", "two-level", "lasso")
-
-# The penalties that can save FDP against the lasso where that has a point.
-SAVING = ("sorted-l1", "two-level")
 
 
 class Boundaries:

@@ -1,42 +1,43 @@
 """FDP saved against the lasso along TPP, up to where the lasso ends."""
 
+from typing import Any
+
 import numpy as np
 from bokeh.models import ColumnDataSource, PrintfTickFormatter
 
-from app.plots.boundaries import SAVING
-from app.plots.canvas import Borders, Canvas, Word, put, word_columns
+from app.plots.canvas import Borders, Canvas, Word, draw, put, word_columns
 from app.reach import Curves
 from app.words import short_name
 
 __all__ = ["SavedPlot"]
+
+# The penalties that can save FDP against the lasso where that has a point.
+SAVING = ("sorted-l1", "two-level")
 
 # The picture shows the first of these heights that holds all savings.
 _HEIGHTS = (0.003, 0.01, 0.03, 0.1, 0.3, 1.0)
 
 
 class SavedPlot:
-    """Figure of the savings, built once.
+    """Figure and sources of the savings, built once."""
 
-    Parameters
-    ----------
-    curves, limit : ColumnDataSource
-        The boundaries and the power limit, as the trade-off plane has them.
-    """
-
-    def __init__(self, curves: ColumnDataSource, limit: ColumnDataSource) -> None:
+    def __init__(self) -> None:
         borders = Borders(8, 22, 40, 14)
         self.canvas = canvas = Canvas(
             "saved-plot", (0.0, 1.0), (-0.05 * 0.03, 0.03), "", [0.0, 0.5, 1.0], None, borders
         )
+        columns: dict[str, list[Any]] = {name: [] for name in ("tpp", *SAVING)}
+        self.curves = ColumnDataSource(columns, name="saved-curves")
+        self.limit = ColumnDataSource({"x": [], "y": []})
         fig = canvas.figure
         fig.yaxis.formatter = PrintfTickFormatter(format="%.2g")
         fig.yaxis.ticker.desired_num_ticks = 3
-        closed = fig.harea(y="y", x1="x", x2=1.0, source=limit, level="underlay")
+        closed = fig.harea(y="y", x1="x", x2=1.0, source=self.limit, level="underlay")
         canvas.hatch(closed.glyph)
         canvas.token(closed.glyph, fill_color="lasso", hatch_color="lasso")
-        edge = fig.line("x", "y", source=limit, line_width=1.6)
+        edge = fig.line("x", "y", source=self.limit, line_width=1.6)
         canvas.token(edge.glyph, line_color="power_limit")
-        self._lines = {key: canvas.curve(key, curves, "tpp", f"saved-{key}") for key in SAVING}
+        self._lines = {key: canvas.curve(key, self.curves, "tpp", key) for key in SAVING}
         self.names = ColumnDataSource(word_columns())
         canvas.words(self.names, text_font_size="11px", padding=1)
 
@@ -47,9 +48,12 @@ class SavedPlot:
                 line.visible = key in shown
 
     def show(self, curves: Curves, shown: tuple[str, ...], limit: float) -> None:
-        """Fit the height to the savings, and name the curves `shown`."""
-        lasso = curves.fdp["lasso"]
-        saved = {key: lasso - curves.fdp[key] for key in SAVING if key in shown}
+        """Draw the savings, fit the height to them, and name the curves `shown`."""
+        every = {key: curves.fdp["lasso"] - curves.fdp[key] for key in SAVING}
+        draw(self.curves, {"tpp": curves.tpp, **every})
+        upright = {"x": [limit, limit], "y": [0.0, 1.0]}
+        put(self.limit, upright if limit < 1.0 else {"x": [], "y": []})
+        saved = {key: each for key, each in every.items() if key in shown}
         most = max((float(np.nanmax(each)) for each in saved.values()), default=0.0)
         height = next(each for each in _HEIGHTS if most <= 0.95 * each or each == 1.0)
         if self.canvas.figure.y_range.end != height:

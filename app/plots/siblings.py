@@ -26,8 +26,8 @@ class SiblingsPlot:
         The ratio of each curve.
     at_ends : bool
         Whether the curves are named at their right ends, or along them where all end alike.
-    own, target : ColumnDataSource
-        The study's own curves and target, as the trade-off plane has them.
+    target : ColumnDataSource
+        The target, as the trade-off plane has it.
     """
 
     def __init__(
@@ -35,34 +35,29 @@ class SiblingsPlot:
         name: str,
         values: tuple[float, ...],
         at_ends: bool,
-        own: ColumnDataSource,
         target: ColumnDataSource,
     ) -> None:
         self._values, self._at_ends = values, at_ends
-        self._drawn: tuple[Array, ...] | None = None
         ticks = [0.0, 0.5, 1.0]
         borders = Borders(8, 22, 30, 14)
         right = 1.14 if at_ends else 1.0  # room for names
         self.canvas = canvas = Canvas(name, (0.0, right), (0.0, 1.0), "", ticks, ticks, borders)
         self._keys = tuple(f"c{i}" for i in range(len(values)))
-        columns: dict[str, list[Any]] = {key: [] for key in ("tpp", *self._keys)}
+        columns: dict[str, list[Any]] = {key: [] for key in ("tpp", "own", *self._keys)}
         self.curves = ColumnDataSource(columns, name=f"{name}-curves")
         self.names = ColumnDataSource(word_columns())
         for key in self._keys:
             line = canvas.figure.line("tpp", key, source=self.curves, line_width=1.5)
             canvas.token(line.glyph, line_color="sorted_l1")
-        canvas.curve("sorted-l1", own, "tpp", "sorted-l1")
+        canvas.curve("sorted-l1", self.curves, "tpp", "own")
         canvas.words(self.names, text_font_size="11px", padding=1)
         canvas.dot(target, 11)
 
-    def show(self, tpp: Array, curves: tuple[Array, ...]) -> None:
-        """Draw the curves along `tpp`."""
-        if curves is not self._drawn:
-            draw(self.curves, {"tpp": tpp, **dict(zip(self._keys, curves, strict=True))})
-            self._drawn = curves
-
-    def name(self, tpp: Array, curves: tuple[Array, ...], own_value: float, own: Array) -> None:
-        """Name the curves, and the study's own."""
+    def show(self, tpp: Array, curves: tuple[Array, ...], own_value: float, own: Array) -> None:
+        """Draw the curves along `tpp` and the study's own, and name them."""
+        draw(
+            self.curves, {"tpp": tpp, "own": own, **dict(zip(self._keys, curves, strict=True))}
+        )
         named = [
             (value, curve)
             for value, curve in zip(self._values, curves, strict=True)

@@ -6,7 +6,7 @@ import numpy as np
 from bokeh.models import ColumnDataSource
 
 from app.kept import Mark
-from app.plots.boundaries import DRAWN, SAVING, Boundaries
+from app.plots.boundaries import DRAWN, Boundaries
 from app.plots.canvas import Canvas, Word, draw, put, word_columns
 from app.plots.loupe import Loupe
 from app.reach import Curves, Reach
@@ -30,8 +30,8 @@ class TradeoffPlane:
             _TICKS,
             _TICKS,
         )
-        columns = ("tpp", "hatch", *DRAWN, *(f"saved-{key}" for key in SAVING))
-        self.curves = ColumnDataSource({name: [] for name in columns}, name="tradeoff-curves")
+        columns: dict[str, list[Any]] = {name: [] for name in ("tpp", "hatch", *DRAWN)}
+        self.curves = ColumnDataSource(columns, name="tradeoff-curves")
         self.rules = ColumnDataSource({"x0": [], "y0": [], "x1": [], "y1": [], "dash": []})
         self.limit = ColumnDataSource({"x": [], "y": []})
         self.notes = ColumnDataSource(word_columns())
@@ -62,14 +62,8 @@ class TradeoffPlane:
         none = np.isnan(curves.fdp[hatched])
         # Beyond the power limit nothing is in the lasso's reach; an open curve hatches nothing.
         fill = 1.0 if hatched == "lasso" else 0.0
-        lasso = curves.fdp["lasso"]
-        columns = {
-            "tpp": curves.tpp,
-            "hatch": np.where(none, fill, curves.fdp[hatched]),
-            **curves.fdp,
-            **{f"saved-{key}": lasso - curves.fdp[key] for key in SAVING},
-        }
-        draw(self.curves, columns)
+        hatch = np.where(none, fill, curves.fdp[hatched])
+        draw(self.curves, {"tpp": curves.tpp, "hatch": hatch, **curves.fdp})
 
     def show_names(self, curves: Curves, shown: tuple[str, ...]) -> None:
         """Name the lasso; the names of the others stand at their ends."""

@@ -38,13 +38,12 @@ class ReachView:
         self._inbox = inbox
         self.tradeoff = plane = TradeoffPlane()
         self.phase = PhasePlane()
-        own, target = plane.curves, plane.target
-        self.by_sparsity = SiblingsPlot("by-sparsity", SPARSITIES, True, own, target)
-        self.by_ratio = SiblingsPlot("by-ratio", RATIOS, False, own, target)
-        self.saved = SavedPlot(own, plane.limit)
+        self.by_sparsity = SiblingsPlot("by-sparsity", SPARSITIES, True, plane.target)
+        self.by_ratio = SiblingsPlot("by-ratio", RATIOS, False, plane.target)
+        self.saved = SavedPlot()
         small = [self.by_sparsity.canvas, self.by_ratio.canvas, self.saved.canvas]
         self._canvases = [plane.canvas, plane.loupe.canvas, *small]
-        link_crosshair(self._canvases, own)
+        link_crosshair(self._canvases, plane.curves)
         self.ends = Ends()
         self.target_grip = Grip(
             "Target", "tradeoff-plane", "target", TPP, FDP,
@@ -58,8 +57,7 @@ class ReachView:
         later = afterwards.put_off
         watch(self._show_choice, ["hatched", "shown"])
         watch(self._show_curves, ["curves", "hatched"])
-        watch(self._show_siblings, ["siblings"])
-        watch(later(self._show_names), ["curves", "shown"])
+        watch(later(self._show_small), ["curves", "siblings", "shown"])
         watch(self._show_needs, ["needs", "hatched", "shown"])
         watch(self._show_reach, ["reach", "problem"])
         watch(later(self._explain), ["reach", "problem", "shown", "kept_as", "keeping"])
@@ -109,13 +107,8 @@ class ReachView:
         if session.curves is not None:
             self.tradeoff.show_curves(session.curves, session.hatched)
 
-    def _show_siblings(self, *_: Any) -> None:
-        found = self._session.siblings
-        if found is not None:
-            self.by_sparsity.show(found.tpp, found.by_sparsity)
-            self.by_ratio.show(found.tpp, found.by_ratio)
-
-    def _show_names(self) -> None:
+    def _show_small(self) -> None:
+        """Let the small pictures and the names of curves follow."""
         session = self._session
         found, reach, curves = session.siblings, session.reach, session.curves
         if reach is None or curves is None:
@@ -124,8 +117,9 @@ class ReachView:
         self.saved.show(curves, session.shown, reach.power_limit)
         if found is not None:
             own = np.interp(found.tpp, curves.tpp, curves.fdp["sorted-l1"])
-            self.by_sparsity.name(found.tpp, found.by_sparsity, reach.sparsity, own)
-            self.by_ratio.name(found.tpp, found.by_ratio, reach.sampling_ratio, own)
+            ratio, sparsity = reach.study_ratios
+            self.by_sparsity.show(found.tpp, found.by_sparsity, sparsity, own)
+            self.by_ratio.show(found.tpp, found.by_ratio, ratio, own)
 
     def _show_needs(self, *_: Any) -> None:
         session = self._session

@@ -89,7 +89,8 @@ class StudyRail:
         changes = {
             key: value for key, value in changes.items() if getattr(control, key) != value
         }
-        if changes or {name, control.per_field} & self._session.typed:
+        # What was typed is put right: when it was taken, or was wrong and something else was.
+        if changes or control.error or {name, control.per_field} & self._session.typed:
             control.param.update(**changes, accepted=self._session.accepted)
 
     def _show_problem(self, *_: Any) -> None:

@@ -166,7 +166,7 @@ class Pieces:
 
 # The first look at gaps and heights, and how often the neighbourhood of the best is zoomed.
 _COARSE, _FINE, _ZOOMS = 12, 5, 10
-_GAPS = np.concatenate([[0.0], np.geomspace(0.05, 10.0, _COARSE - 1)])
+_GAPS: Array = np.concatenate([[0.0], np.geomspace(0.05, 10.0, _COARSE - 1)])
 _OVER = 1e3  # outweighs any risk: a fit with more distinct sizes than runs does not exist
 
 
@@ -188,8 +188,8 @@ class TunedTwoLevel:
         best = self._best(threshold, _GAPS, spacing * np.arange(_COARSE), law)
         steps = np.array([max(0.5, 0.4 * best[0]), spacing])
         if isinstance(near, Pieces):
-            pair = np.array([best, (near.gap, near.height)])
-            if self._losses(threshold, *pair.T, law).argmin() == 1:
+            gaps, heights = np.array([best, (near.gap, near.height)]).T
+            if self._losses(threshold, gaps, heights, law).argmin() == 1:
                 best, steps = (near.gap, near.height), np.minimum(steps, 0.25)
         for _ in range(_ZOOMS):
             around = np.linspace(-1.0, 1.0, _FINE)

@@ -31,8 +31,8 @@ __all__ = ["latency_ratios"]
 
 STEPS, WARM_UP, ROUNDS = 100, 5, 3
 
-# What a change of the study sends.
-STUDY = ["study", "tradeoff-curves", "by-sparsity-curves"]
+# What a change of the study sends at once; names, words and small pictures follow.
+STUDY = ["study", "tradeoff-curves"]
 
 _WATCH = """(names) => {
   const doc = Bokeh.documents[0]
@@ -46,6 +46,10 @@ _WATCH = """(names) => {
   addEventListener("pointermove", begin, true)
 }"""
 _DONE = "(names) => names.every((name) => name in window.stamps)"
+# A step begins when the one before has been painted, as it does for a hand that looks.
+_PAINTED = """() => new Promise((done) => {
+  requestAnimationFrame(() => requestAnimationFrame(() => setTimeout(done, 0)))
+})"""
 _TOOK = "(names) => Math.max(...names.map((name) => window.stamps[name])) - window.begun"
 
 
@@ -128,6 +132,7 @@ def _keys(page: Page, slider: str, names: list[str]) -> np.ndarray:
         page.keyboard.press("ArrowRight" if i // 50 % 2 == 0 else "ArrowLeft")
         page.wait_for_function(_DONE, arg=names, timeout=5000)
         times.append(page.evaluate(_TOOK, names))
+        page.evaluate(_PAINTED)
     return np.array(times[WARM_UP:])
 
 
@@ -143,5 +148,6 @@ def _drags(page: Page) -> np.ndarray:
         page.mouse.move(x, y)
         page.wait_for_function(_DONE, arg=STUDY, timeout=5000)
         times.append(page.evaluate(_TOOK, STUDY))
+        page.evaluate(_PAINTED)
     page.mouse.up()
     return np.array(times[WARM_UP:])

@@ -56,8 +56,12 @@ def test_the_pictures_show_the_contract_functions(open_page, demo_url):
     nodes = evaluated(curves["tpp"])
     for key, boundary, slack in (
         ("two-level-closed-form", two_level_closed_form, 1e-4),  # drawn, not evaluated
-        ("two-level", two_level_boundary, 1e-9),  # the nodes are the function's own values
-        ("sorted-l1", sorted_l1_boundary, 1e-9),
+        (
+            "two-level",
+            two_level_boundary,
+            5e-6,
+        ),  # the function's own values, rounded as the TPPs
+        ("sorted-l1", sorted_l1_boundary, 5e-6),
     ):
         expected = boundary([curves["tpp"][i] for i in nodes], 0.3, 0.2)
         drawn = [curves[key][i] for i in nodes]
@@ -101,7 +105,9 @@ def test_a_slider_moves_the_curves_and_the_study(open_page, demo_url):
     curves = data(page, "tradeoff-curves")
     some = next(i for i in evaluated(curves["tpp"]) if curves["tpp"][i] > 0.7)
     expected = sorted_l1_boundary(curves["tpp"][some], runs / 2000, 0.2)
-    assert curves["sorted-l1"][some] == pytest.approx(expected, abs=1e-9)
+    assert curves["sorted-l1"][some] == pytest.approx(
+        expected, abs=5e-6
+    )  # rounded, as the TPPs are
 
 
 def test_count_and_ratio_are_bound_both_ways(open_page, demo_url):
