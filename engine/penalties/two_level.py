@@ -185,7 +185,8 @@ class TunedTwoLevel:
         # There are two valleys, of narrow gaps and of gaps so wide that they cap the estimates:
         # each strength is looked at afresh, so that none is followed into the wrong one.
         spacing = (float(law.sizes.max()) + 3.0) / (_COARSE - 1)
-        best = self._best(threshold, _GAPS, spacing * np.arange(_COARSE), law)
+        heights = np.linspace(0.0, spacing * (_COARSE - 1), _COARSE)
+        best = self._best(threshold, _GAPS, heights, law)
         steps = np.array([max(0.5, 0.4 * best[0]), spacing])
         if isinstance(near, Pieces):
             gaps, heights = np.array([best, (near.gap, near.height)]).T
