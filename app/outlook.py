@@ -3,6 +3,7 @@
 from dataclasses import dataclass, replace
 from functools import lru_cache
 
+from engine.normal import Array
 from engine.prediction import (
     Curve,
     Prediction,
@@ -11,8 +12,6 @@ from engine.prediction import (
     predict,
     prediction_optimal_lasso,
 )
-
-from engine.normal import Array
 from engine.study import Study
 
 __all__ = ["COMPARED", "RULES", "Comparators", "Outlook", "comparators", "outlook"]

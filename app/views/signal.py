@@ -5,7 +5,6 @@ from typing import Any
 
 import panel as pn
 from bokeh.models import ColumnDataSource
-from engine.prediction import Prediction
 from markupsafe import Markup
 
 from app.afterwards import Afterwards
@@ -20,6 +19,7 @@ from app.state import Session
 from app.theme import THEMES
 from app.verdict import Piece
 from app.words import computed, count, significant, typed
+from engine.prediction import Prediction
 from engine.quantities import NOISE_SD
 from engine.study import Effect
 

@@ -3,9 +3,9 @@
 import pickle
 
 import pytest
-from engine.prediction import curve, predict
 
 from app.outlook import COMPARED, RULES, comparators, outlook
+from engine.prediction import curve, predict
 from engine.study import Effect, Study
 
 STUDY = Study("Blends", 600, 2000, 100, 1.0, (Effect(0.2, 1.0),))
