@@ -47,7 +47,7 @@ class SignalView:
 
         self.noise = Control(NOISE_SD, post)
         self.effects = Sheet("effects", self._use)
-        self.gains_verdict = Sheet("verdict", live=True)
+        self.gains_verdict = Sheet("sentence", live=True)
         self.gains_table = Sheet("gains", None)
         self.page = Sheet("pages", self._use)
         self.page.html = '<input type="hidden" data-do="page" data-key="page">'

@@ -89,8 +89,7 @@ class StudyRail:
         changes = {
             key: value for key, value in changes.items() if getattr(control, key) != value
         }
-        # What was typed is put right: when it was taken, or was wrong and something else was.
-        if changes or control.error or {name, control.per_field} & self._session.typed:
+        if changes or {name, control.per_field} & self._session.typed:
             control.param.update(**changes, accepted=self._session.accepted)
 
     def _show_problem(self, *_: Any) -> None:
@@ -100,7 +99,9 @@ class StudyRail:
             mine = problem is not None and problem.field in (name, ratio and ratio.name)
             error = (problem.message, problem.field) if mine else ("", "")
             if (control.error, control.error_field) != error:
-                control.param.update(error=error[0], error_field=error[1])
+                # Where another change was taken, what was wrong here is put right.
+                accepted = self._session.accepted
+                control.param.update(error=error[0], error_field=error[1], accepted=accepted)
 
     def _show_choices(self, *_: Any) -> None:
         session = self._session

@@ -51,8 +51,8 @@ def test_a_kept_point_is_exported_with_its_numbers(open_page, demo_url):
     assert point["limits"]["lasso"] is None
     assert sum(count for _, count in point["weights"]["normalised"]) == 2000
     page.get_by_role("tab", name="Shortlist").click()
-    expect(page.locator("table tbody tr")).to_have_count(1)
-    expect(page.locator("table")).to_contain_text("0.711")
+    expect(page.locator(".sheet.table tbody tr")).to_have_count(1)
+    expect(page.locator(".sheet.table table")).to_contain_text("0.711")
 
 
 def test_a_penalty_without_a_point_cannot_be_kept(open_page, demo_url):
