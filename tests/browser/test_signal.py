@@ -16,7 +16,7 @@ def opened(open_page, url):
 
 
 def wait_answers(page):
-    page.locator('.page.signal .verdict p[data-exact="true"]').wait_for(timeout=40_000)
+    page.locator('.page.signal .verdict p[data-exact="true"]').wait_for(timeout=90_000)
 
 
 def test_the_table_tells_what_the_engine_predicts(open_page, demo_url):
@@ -47,12 +47,12 @@ def test_noise_and_effects_change_the_answer(open_page, demo_url):
 def test_effects_are_added_and_dropped(open_page, demo_url):
     page = opened(open_page, demo_url)
     page.get_by_role("button", name="Add effect").click()
-    expect(page.locator(".effect")).to_have_count(3)
+    expect(page.locator(".effect")).to_have_count(3, timeout=15_000)
     page.get_by_label("Remove effect 1").click()
-    expect(page.locator(".effect")).to_have_count(2)
+    expect(page.locator(".effect")).to_have_count(2, timeout=15_000)
     page.get_by_label("share").first.fill("0.3")
     page.keyboard.press("Tab")
-    expect(page.get_by_label("share").nth(1)).to_have_value("0.7")
+    expect(page.get_by_label("share").nth(1)).to_have_value("0.7", timeout=15_000)
 
 
 @pytest.mark.parametrize(("text", "words"), [("0", "size must be"), ("big", "size must be")])
