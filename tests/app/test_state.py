@@ -8,6 +8,7 @@ from app.reach import exact, stand_in
 from app.ready import ready_atlas, ready_contours
 from app.state import Problem, Session
 from engine.demo import DEMO_STUDY
+from engine.study import Spread
 
 
 def at_once(target, done):
@@ -194,3 +195,12 @@ def test_what_is_hatched_is_a_penalty(session):
     session.hatch("two-level-closed-form")
     session.hatch("no such penalty")
     assert session.hatched == "two-level-closed-form"
+
+
+def test_a_spread_may_be_believed(session):
+    session.believe([{"spread": "normal", "scale": "0.3", "share": 1.0}])
+    assert session.problem is None
+    assert session.study().effects == (Spread("normal", 0.3, 1.0),)
+    session.believe([{"size": "0", "share": 1.0}])
+    assert session.problem.field == "effects"
+    assert session.study().effects == (Spread("normal", 0.3, 1.0),)

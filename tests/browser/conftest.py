@@ -49,13 +49,13 @@ def open_page(chromium: Browser) -> Iterator[Callable[..., Page]]:
         context = chromium.new_context(viewport={"width": width, "height": height})
         contexts.append(context)
         page = context.new_page()
-        page.set_default_timeout(10_000)
+        page.set_default_timeout(20_000)
         origin = url.partition("?")[0]
         own = (origin, "data:", "blob:", origin.replace("http", "ws"))
         page.on("pageerror", lambda error: wrong.append(f"page error: {error}"))
         page.on("console", lambda m: m.type == "error" and wrong.append(f"console: {m.text}"))
         page.on("request", lambda r: r.url.startswith(own) or wrong.append(f"outside: {r.url}"))
-        page.goto(url)
+        page.goto(url, timeout=60_000)
         settle(page)
         return page
 
